@@ -1,0 +1,64 @@
+"""Tells loose parts: captive with their play, adrift, or cut by the window's edge.
+
+A part is held if it hangs together with the wafer. A loose one is moved through free space, along each axis, in a
+flood of small offsets, and turned about z: if it cannot leave it is captive, and its play along each axis is told;
+otherwise it is adrift, and the rinse takes it. A part that reaches a side of the window may be held outside it.
+
+An adrift part that never had an anchor is told by `missing-anchor` instead.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from typing import Any
+
+from flowemu.findings import Finding
+from flowemu.registry import Check
+
+ADRIFT, CAPTIVE, CUT = "part-adrift", "part-captive", "part-cut-by-window"
+
+
+def run(view: Any) -> Iterator[Finding]:
+    """One finding a loose part."""
+    from flowemu.checks._anchors import lost_anchor
+    from flowemu.stack.wafer import Loosened
+
+    last = {event.part: event for event in view.events(Loosened)}
+    for event in last.values():
+        centre = _centre(event.box)
+        films = " and ".join(event.films)
+        if event.state == "captive":
+            play = _play(event.play)
+            text = f"part {event.part} ({films}) is loose but cannot leave; its play is {play}"
+            yield Finding(CAPTIVE, "note", event.step, event.films[0], event.part, centre, text, f"{event.searched}.")
+        elif event.state == "adrift":
+            lost = lost_anchor(view, event)
+            if lost is not None and lost.mask is not None and lost.distance > 0:
+                continue
+            text = f"part {event.part} ({films}) is adrift after {view.step_title(event.step)}"
+            yield Finding(ADRIFT, "error", event.step, event.films[0], event.part, centre, text, _cause(view, event, lost))
+        else:
+            text = f"part {event.part} ({films}) is cut by the window's edge; whether it is held cannot be told"
+            cause = "Widen the window, or name the side as a mirror if it is one."
+            yield Finding(CUT, "note", event.step, event.films[0], event.part, centre, text, cause)
+
+
+def _cause(view: Any, event: Any, lost: Any) -> str:
+    if lost is None or lost.removed is None:
+        return f"Nothing joins it to the wafer, and {event.searched}."
+    return f"It rested on {lost.rested}, which {view.step_title(lost.removed)} took away, and {event.searched}."
+
+
+def _centre(box: tuple[float, ...]) -> tuple[float, float, float]:
+    return tuple(0.5 * (box[k] + box[k + 3]) for k in range(3))  # type: ignore[return-value]
+
+
+def _play(play: tuple[float | None, ...] | None) -> str:
+    if play is None:
+        return "not known"
+    texts = ["open" if p is None else f"{p:.3g}" for p in play]
+    return ", ".join(f"{axis} -{low} +{high}" for axis, low, high in zip("xyz", texts[::2], texts[1::2], strict=True)) + " um"
+
+
+CHECK = Check("loose parts", (ADRIFT, CAPTIVE, CUT), "geometry", run)
+"""Common practice: a part that nothing holds after its release is lost in the rinse."""

@@ -1,0 +1,38 @@
+"""The film stack under a point of a finished run."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from flowemu.engine.run import Run
+
+
+def probe(run: Run, at: tuple[float, float]) -> dict[str, Any]:
+    """Films under `at`, um, lowest first; heights from the wafer's front face.
+
+    The wafer's own entry begins at minus its thickness; a gap between two entries is a void. Films on
+    the back that the grid does not reach come first.
+    """
+    from flowemu.stack.columns import column
+
+    stack = run.wafer.stack
+    x0, y0, x1, y1 = stack.grid.box
+    if not (x0 <= at[0] <= x1 and y0 <= at[1] <= y1):
+        from flowemu.errors import RunError
+
+        raise RunError(f"({at[0]:g}, {at[1]:g}) um lies outside the window [{x0:g}, {y0:g}, {x1:g}, {y1:g}] um")
+    bottom = -run.flow.wafer.thickness
+    entries = []
+    low = bottom
+    for coat in run.wafer.back:
+        entries.insert(0, _entry(coat.name, coat.material, low - coat.thickness, low))
+        low -= coat.thickness
+    for layer in column(stack, *at):
+        film = stack.films[layer.film]
+        start = bottom if layer.film == 0 and not any(e["film"] == "wafer" for e in entries) else layer.low
+        entries.append(_entry(film.name, film.material, start, layer.high))
+    return {"at_um": [at[0], at[1]], "stack": entries}
+
+
+def _entry(film: str, material: str, low: float, high: float) -> dict[str, Any]:
+    return {"film": film, "material": material, "from_um": float(f"{low:.7g}"), "to_um": float(f"{high:.7g}")}

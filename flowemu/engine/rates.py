@@ -1,0 +1,31 @@
+"""Which rates decided a run although the flow states them itself or no source backs them."""
+
+from __future__ import annotations
+
+from flowemu.engine.tools import Tools
+from flowemu.flow.flow import Flow
+from flowemu.stack.wafer import Cut, Wafer
+
+WEAK = ("from memory", "unverified")
+
+
+def deciding_rates(flow: Flow, tools: Tools, wafer: Wafer) -> dict[str, tuple[str, ...]]:
+    """`overridden` and `from_memory`: materials and etchants whose rates took something away."""
+    overridden: dict[str, None] = {}
+    weak: dict[str, None] = {}
+    for event in wafer.events:
+        if not isinstance(event, Cut) or event.verb not in ("etch", "release"):
+            continue
+        settings = flow.steps[event.step - 1].settings
+        states = {s.settings.film: s.settings.state for s in flow.steps if s.verb == "deposit"}
+        for loss in event.losses:
+            text = f"{loss.material} in {event.agent}"
+            if loss.film in settings.rates or loss.material in settings.rates:
+                overridden[text] = None
+                continue
+            datum = tools.rate(event.agent, loss.material, states.get(loss.film))
+            if datum.overridden:
+                overridden[text] = None
+            elif datum.standing.startswith(WEAK):
+                weak[text] = None
+    return {"overridden": tuple(overridden), "from_memory": tuple(weak)}

@@ -1,0 +1,112 @@
+"""Whether a loose body, moved by an offset, runs into the rest of the structure."""
+
+from __future__ import annotations
+
+import numpy as np
+from numba import njit, prange
+
+
+@njit(cache=True)
+def _among(keys, key):
+    low = np.searchsorted(keys, key)
+    return low < keys.size and keys[low] == key
+
+
+@njit(cache=True)
+def leaving_points(samples, code, strides, shape, count, start, interval_code, interval_end, piece, pieces, zc, dx, dy):
+    """Points on axis edges where the listed pieces end, `(m, 3)` um from the first sample in x and y."""
+    nz, ny, nx = shape
+    n = code.size
+    total = 0
+    out = np.empty((0, 3), np.float64)
+    for fill in range(2):
+        if fill == 1:
+            out = np.empty((total, 3), np.float64)
+            total = 0
+        for s in range(samples.size):
+            i = samples[s]
+            z = i // (ny * nx)
+            y = (i // nx) % ny
+            x = i % nx
+            for d in range(3):
+                m = np.int64(count[s, d])
+                at = start[s * 7 + d]
+                j = i + strides[d]
+                for q in range(m - 1):
+                    a = piece[i] if q == 0 else piece[n + at + q]
+                    b = piece[j] if q + 1 == m - 1 else piece[n + at + q + 1]
+                    if (interval_code[at + q] >= 0 and _among(pieces, a)) == (
+                        interval_code[at + q + 1] >= 0 and _among(pieces, b)
+                    ):
+                        continue
+                    if fill == 1:
+                        share = interval_end[at + q]
+                        out[total, 0] = (x + (share if d == 0 else 0.0)) * dx
+                        out[total, 1] = (y + (share if d == 1 else 0.0)) * dy
+                        out[total, 2] = zc[z] + (share * (zc[z + 1] - zc[z]) if d == 2 else 0.0)
+                    total += 1
+    return out
+
+
+@njit(cache=True)
+def _trilinear(field, z, y, x, wz, wy, wx, z1, y1, x1):
+    low = (field[z, y, x] * (1 - wx) + field[z, y, x1] * wx) * (1 - wy) + (
+        field[z, y1, x] * (1 - wx) + field[z, y1, x1] * wx
+    ) * wy
+    high = (field[z1, y, x] * (1 - wx) + field[z1, y, x1] * wx) * (1 - wy) + (
+        field[z1, y1, x] * (1 - wx) + field[z1, y1, x1] * wx
+    ) * wy
+    return low * (1 - wz) + high * wz
+
+
+@njit(cache=True, parallel=True)
+def film_depth(depth, points, top, floor, gone, has_floor, has_gone, film, shared, code, piece, pieces, x0, y0, cell, zc):
+    """Raise `depth (m,)` at each point to how deep it lies in one film of the rest, um.
+
+    Where the film is `shared` with the body itself, a point counts only if a sample of the film beside
+    it belongs to another piece. Points outside the window's sides are carried in, as in a mirror.
+    """
+    nz, ny, nx = top.shape
+    wide_y, wide_x = code.shape[1], code.shape[2]
+    for k in prange(points.shape[0]):
+        fx = (points[k, 0] - x0) / cell
+        fy = (points[k, 1] - y0) / cell
+        if points[k, 2] >= zc[nz - 1] or points[k, 2] <= zc[0]:
+            if points[k, 2] <= zc[0] and film == 0:
+                depth[k] = max(depth[k], cell)
+            continue
+        fx = min(max(fx, 0.0), nx - 1.0)
+        fy = min(max(fy, 0.0), ny - 1.0)
+        x = min(int(fx), max(nx - 2, 0))
+        y = min(int(fy), max(ny - 2, 0))
+        z = min(max(np.searchsorted(zc, points[k, 2]) - 1, 0), nz - 2)
+        x1 = min(x + 1, nx - 1)
+        y1 = min(y + 1, ny - 1)
+        wz = (points[k, 2] - zc[z]) / (zc[z + 1] - zc[z])
+        wx = fx - x
+        wy = fy - y
+        t = _trilinear(top, z, y, x, wz, wy, wx, z + 1, y1, x1)
+        inside = -t
+        if inside <= depth[k]:
+            continue
+        if has_floor:
+            inside = min(inside, _trilinear(floor, z, y, x, wz, wy, wx, z + 1, y1, x1))
+            if inside <= depth[k]:
+                continue
+        if has_gone:
+            inside = min(inside, -_trilinear(gone, z, y, x, wz, wy, wx, z + 1, y1, x1))
+            if inside <= depth[k]:
+                continue
+        if shared:
+            other = False
+            for c in range(8):
+                a = z + (c >> 2)
+                b = min(y + ((c >> 1) & 1), ny - 1)
+                d = min(x + (c & 1), nx - 1)
+                if code[a, b, d] == film:
+                    i = (a * wide_y + b) * wide_x + d
+                    if not _among(pieces, piece[i]):
+                        other = True
+            if not other:
+                continue
+        depth[k] = inside

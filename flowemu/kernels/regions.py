@@ -1,0 +1,315 @@
+"""Which film or void is where, to a small fraction of a cell, and what touches what.
+
+A grid's cells are cut into tetrahedra (Freudenthal's division) on which every field is linear. A
+film is then the overlap of at most three half spaces, hence convex in each tetrahedron, and its
+pieces can be joined exactly through the edges, however thin they are.
+
+A point's *code* is the number of its film, or, in a void, -1 (under no film) or -1 - k where k is
+the first film that was laid over the point after it had last been filled.
+
+Field values of a sample lie side by side in one row; `ti, bi, gi` give for each film the columns of
+its top, floor and gone fields, -1 where it has none.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from numba import njit, prange
+
+MAX_INTERVALS = 24
+SLIVER = 1e-3  # shortest interval of an edge that counts, as a share of the edge
+
+# Edges of the division leave a sample towards these neighbours (dz, dy, dx).
+EDGE_STEPS = np.array(
+    [(0, 0, 1), (0, 1, 0), (1, 0, 0), (0, 1, 1), (1, 0, 1), (1, 1, 0), (1, 1, 1)], dtype=np.int64
+)
+# Corners of the six tetrahedra of a cell; bit 0 is x, bit 1 is y, bit 2 is z.
+TETRAHEDRA = np.array(
+    [(0, 1, 3, 7), (0, 1, 5, 7), (0, 2, 3, 7), (0, 2, 6, 7), (0, 4, 5, 7), (0, 4, 6, 7)], dtype=np.int64
+)
+# Direction of the edge between two corners, by the difference of their bits.
+STEP_OF_BITS = np.array([-1, 0, 1, 3, 2, 4, 5, 6], dtype=np.int64)
+
+
+@njit(cache=True, parallel=True)
+def paint(code, top, floor, gone, has_floor, has_gone, k):
+    """Enter film `k` into the codes of all samples, `(n,)` int16; films come oldest first."""
+    for i in prange(code.size):
+        if code[i] < 0 and top[i] < 0:
+            if not has_floor or floor[i] >= 0:
+                if not has_gone or gone[i] < 0:
+                    code[i] = k
+                else:
+                    code[i] = -1
+            elif code[i] == -1:
+                code[i] = -1 - k
+
+
+@njit(cache=True)
+def code_of(values, ti, bi, gi):
+    """The code of a point from its field values, `(fields,)` float."""
+    roof = 0
+    for k in range(ti.size):
+        if values[ti[k]] < 0:
+            if bi[k] < 0 or values[bi[k]] >= 0:
+                if gi[k] < 0 or values[gi[k]] < 0:
+                    return k
+                roof = 0
+            elif roof == 0:
+                roof = k
+    return -1 - roof
+
+
+@njit(cache=True)
+def partition(va, vb, ti, bi, gi, code_out, end_out):
+    """Cut the edge between two samples into intervals of one code.
+
+    Writes the codes and the intervals' upper ends (share of the edge, the last is 1) and returns
+    their number; intervals shorter than `SLIVER` are dropped.
+    """
+    cuts = np.empty(MAX_INTERVALS, np.float64)
+    n = 0
+    for f in range(va.size):
+        a = va[f]
+        b = vb[f]
+        if (a < 0) != (b < 0) and n < MAX_INTERVALS - 1:
+            c = a / (a - b)
+            j = n
+            while j > 0 and cuts[j - 1] > c:
+                cuts[j] = cuts[j - 1]
+                j -= 1
+            cuts[j] = c
+            n += 1
+    mid = np.empty(va.size, np.float64)
+    low = 0.0
+    m = 0
+    for j in range(n + 1):
+        high = cuts[j] if j < n else 1.0
+        if high - low < SLIVER and not (j == n and m == 0):
+            continue
+        s = 0.5 * (low + high)
+        for f in range(va.size):
+            mid[f] = va[f] + s * (vb[f] - va[f])
+        code = code_of(mid, ti, bi, gi)
+        if m > 0 and code_out[m - 1] == code:
+            end_out[m - 1] = high
+        else:
+            code_out[m] = code
+            end_out[m] = high
+            m += 1
+        low = high
+    end_out[m - 1] = 1.0
+    return m
+
+
+@njit(cache=True, parallel=True)
+def mixed_cells(code):
+    """Mark each cell between samples, `(nz-1, ny-1, nx-1)` bool, whose corners differ in code."""
+    nz, ny, nx = code.shape
+    mixed = np.zeros((nz - 1, ny - 1, nx - 1), np.bool_)
+    for z in prange(nz - 1):
+        for y in range(ny - 1):
+            for x in range(nx - 1):
+                c = code[z, y, x]
+                mixed[z, y, x] = (
+                    code[z, y, x + 1] != c
+                    or code[z, y + 1, x] != c
+                    or code[z, y + 1, x + 1] != c
+                    or code[z + 1, y, x] != c
+                    or code[z + 1, y, x + 1] != c
+                    or code[z + 1, y + 1, x] != c
+                    or code[z + 1, y + 1, x + 1] != c
+                )
+    return mixed
+
+
+@njit(cache=True)
+def near_samples(mixed):
+    """Mark the samples at the corners of mixed cells, `(nz, ny, nx)` bool."""
+    cz, cy, cx = mixed.shape
+    near = np.zeros((cz + 1, cy + 1, cx + 1), np.bool_)
+    for z in range(cz):
+        for y in range(cy):
+            for x in range(cx):
+                if mixed[z, y, x]:
+                    near[z : z + 2, y : y + 2, x : x + 2] = True
+    return near
+
+
+@njit(cache=True, parallel=True)
+def cut_edges(samples, row_of, code, values, ti, bi, gi, strides, shape):
+    """Count the intervals on every edge from every near sample, `(m, 7)` uint8; 0 where one code."""
+    m = samples.size
+    count = np.zeros((m, 7), np.uint8)
+    nz, ny, nx = shape
+    for s in prange(m):
+        codes = np.empty(MAX_INTERVALS, np.int16)
+        ends = np.empty(MAX_INTERVALS, np.float32)
+        i = samples[s]
+        z = i // (ny * nx)
+        y = (i // nx) % ny
+        x = i % nx
+        for d in range(7):
+            if z + EDGE_STEPS[d, 0] >= nz or y + EDGE_STEPS[d, 1] >= ny or x + EDGE_STEPS[d, 2] >= nx:
+                continue
+            j = i + strides[d]
+            if code[i] == code[j] or row_of[j] < 0:
+                continue
+            count[s, d] = partition(values[s], values[row_of[j]], ti, bi, gi, codes, ends)
+    return count
+
+
+@njit(cache=True, parallel=True)
+def fill_edges(samples, row_of, values, ti, bi, gi, strides, count, start):
+    """Codes and upper ends of the intervals counted by `cut_edges`, edge after edge."""
+    total = start[-1]
+    code_out = np.empty(total, np.int16)
+    end_out = np.empty(total, np.float32)
+    for s in prange(samples.size):
+        codes = np.empty(MAX_INTERVALS, np.int16)
+        ends = np.empty(MAX_INTERVALS, np.float32)
+        for d in range(7):
+            n = np.int64(count[s, d])
+            if n == 0:
+                continue
+            j = row_of[samples[s] + strides[d]]
+            partition(values[s], values[j], ti, bi, gi, codes, ends)
+            at = start[s * 7 + d]
+            for q in range(n):
+                code_out[at + q] = codes[q]
+                end_out[at + q] = ends[q]
+    return code_out, end_out
+
+
+@njit(cache=True)
+def find(parent, i):
+    """Root of `i`, halving the path on the way."""
+    while parent[i] != i:
+        parent[i] = parent[parent[i]]
+        i = parent[i]
+    return i
+
+
+@njit(cache=True)
+def unite(parent, i, j):
+    """Put `i` and `j` into one set; the lower root stays, so the result knows no order."""
+    a = find(parent, i)
+    b = find(parent, j)
+    if a < b:
+        parent[b] = a
+    elif b < a:
+        parent[a] = b
+
+
+@njit(cache=True)
+def join_samples(code, extra):
+    """Union-find parents of all samples joined with their like axis neighbours, and `extra` more."""
+    nz, ny, nx = code.shape
+    n = nz * ny * nx
+    parent = np.empty(n + extra, np.int32)
+    i = 0
+    for z in range(nz):
+        for y in range(ny):
+            for x in range(nx):
+                c = code[z, y, x]
+                parent[i] = i
+                if x > 0 and code[z, y, x - 1] == c:
+                    parent[i] = parent[i - 1]
+                if y > 0 and code[z, y - 1, x] == c:
+                    if not (x > 0 and code[z, y - 1, x - 1] == c and code[z, y, x - 1] == c):
+                        unite(parent, i, i - nx)
+                if z > 0 and code[z - 1, y, x] == c:
+                    if not (x > 0 and code[z - 1, y, x - 1] == c and code[z, y, x - 1] == c):
+                        unite(parent, i, i - ny * nx)
+                i += 1
+    for j in range(n, n + extra):
+        parent[j] = j
+    return parent
+
+
+@njit(cache=True)
+def join_edges(parent, samples, code, strides, shape, count, start, interval_code):
+    """Join like samples across diagonals, and voids that abut along an edge."""
+    n = code.size
+    nz, ny, nx = shape
+    for s in range(samples.size):
+        i = samples[s]
+        z = i // (ny * nx)
+        y = (i // nx) % ny
+        x = i % nx
+        for d in range(7):
+            if z + EDGE_STEPS[d, 0] >= nz or y + EDGE_STEPS[d, 1] >= ny or x + EDGE_STEPS[d, 2] >= nx:
+                continue
+            j = i + strides[d]
+            if d > 2 and code[i] == code[j]:
+                unite(parent, i, j)
+            at = start[s * 7 + d]
+            last = count[s, d] - 1
+            for q in range(last):
+                if interval_code[at + q] < 0 and interval_code[at + q + 1] < 0:
+                    a = i if q == 0 else n + at + q
+                    b = j if q + 1 == last else n + at + q + 1
+                    unite(parent, a, b)
+
+
+@njit(cache=True)
+def join_thin(parent, cells, row_of, code, count, start, interval_code, corner_offsets):
+    """Join the intervals inside edges with their like in each tetrahedron of the mixed cells."""
+    n = code.size
+    node = np.empty(64, np.int64)
+    kind = np.empty(64, np.int64)
+    for c in range(cells.size):
+        base = cells[c]
+        thin = False
+        for a in range(7):
+            s = row_of[base + corner_offsets[a]]
+            if s >= 0:
+                for b in range(a + 1, 8):
+                    if (a & b) == a and count[s, STEP_OF_BITS[b - a]] > 2:
+                        thin = True
+        if not thin:
+            continue
+        for t in range(6):
+            m = 0
+            for a in range(4):
+                i = base + corner_offsets[TETRAHEDRA[t, a]]
+                node[m] = i
+                kind[m] = code[i]
+                m += 1
+                s = row_of[i]
+                for b in range(a + 1, 4):
+                    d = STEP_OF_BITS[TETRAHEDRA[t, b] - TETRAHEDRA[t, a]]
+                    at = start[s * 7 + d]
+                    for q in range(1, count[s, d] - 1):
+                        if m < 60:
+                            node[m] = n + at + q
+                            kind[m] = interval_code[at + q]
+                            m += 1
+            for p in range(m):
+                for q in range(p):
+                    if kind[p] == kind[q]:
+                        unite(parent, node[p], node[q])
+
+
+@njit(cache=True)
+def join_contacts(parent, samples, code, strides, count, start, interval_code):
+    """Join solids that abut along an edge (the pieces become bodies)."""
+    n = code.size
+    for s in range(samples.size):
+        i = samples[s]
+        for d in range(7):
+            at = start[s * 7 + d]
+            last = count[s, d] - 1
+            for q in range(last):
+                if interval_code[at + q] >= 0 and interval_code[at + q + 1] >= 0:
+                    a = i if q == 0 else n + at + q
+                    b = i + strides[d] if q + 1 == last else n + at + q + 1
+                    unite(parent, a, b)
+
+
+@njit(cache=True)
+def flatten(parent):
+    """Every member's root, `(n,)` int32."""
+    for i in range(parent.size):
+        parent[i] = parent[parent[i]]
+    return parent

@@ -1,0 +1,121 @@
+"""The film stack: the whole geometry, and the three operations that every step is made of."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from functools import cached_property
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from flowemu.stack.film import Film
+from flowemu.stack.grid import Grid
+
+if TYPE_CHECKING:
+    from flowemu.stack.topology import Topology
+
+BAND = 4.0  # cells to either side of a surface within which its field is a distance
+
+
+@dataclass(frozen=True, eq=False)
+class FilmStack:
+    """Ordered films on a grid, the wafer first; nothing of a stack is ever written into.
+
+    Attributes
+    ----------
+    surface : (nz, ny, nx) float32, um
+        Signed distance to the solid's surface, negative inside; what the next film will lie on.
+        Solid or void thinner than a cell shows in the films and not here.
+    """
+
+    grid: Grid
+    films: tuple[Film, ...]
+    surface: np.ndarray
+
+    @classmethod
+    def bare(cls, grid: Grid, material: str, state: str | None = None) -> FilmStack:
+        """A bare wafer, its front face at z = 0."""
+        height = np.broadcast_to(grid.z.astype(np.float32)[:, None, None], grid.shape)
+        top = np.ascontiguousarray(height)
+        return cls(grid, (Film("wafer", material, state, 0, top),), top)
+
+    @cached_property
+    def topology(self) -> Topology:
+        """Codes, pieces, bodies and open space of this stack (made when first asked for)."""
+        from flowemu.stack.topology import Topology
+
+        return Topology.of(self.grid, self.films)
+
+    @property
+    def band(self) -> float:
+        """Width in um of the band in which the fields are distances."""
+        return BAND * self.grid.cell
+
+    def index(self, name: str) -> int | None:
+        """Number of the last film of this name."""
+        for k in range(len(self.films) - 1, -1, -1):
+            if self.films[k].name == name:
+                return k
+        return None
+
+    def add(self, film: Film) -> FilmStack:
+        """Append a film, given with the `top` field of the solid it makes with what is below it."""
+        laid = replace(film, floor=self.surface)
+        return FilmStack(self.grid, (*self.films, laid), film.top)
+
+    def carve(self, removed: Mapping[int, np.ndarray]) -> FilmStack:
+        """Take away from each named film what lies where its removed field is positive.
+
+        A field raises the film's `gone` field; films left with nothing are dropped. Where nothing is
+        taken the very same stack comes back.
+        """
+        films = list(self.films)
+        changed = False
+        for k, field in removed.items():
+            gone = films[k].gone
+            if not bool(np.any(field > 0)):
+                continue
+            films[k] = replace(films[k], gone=field if gone is None else np.maximum(gone, field))
+            changed = True
+        return self._recut(films) if changed else self
+
+    def without(self, numbers: set[int]) -> FilmStack:
+        """The stack with whole films taken away."""
+        return self._recut([film for k, film in enumerate(self.films) if k not in numbers]) if numbers else self
+
+    def split(self, k: int, region: np.ndarray, film: Film) -> FilmStack:
+        """Turn the part of film `k` where `region` is negative into another film (its fields are set here)."""
+        old = self.films[k]
+        outside = -region
+        part = replace(
+            film,
+            top=old.top,
+            floor=old.floor,
+            gone=region if old.gone is None else np.maximum(old.gone, region),
+        )
+        rest = replace(old, gone=outside if old.gone is None else np.maximum(old.gone, outside))
+        return FilmStack(self.grid, (*self.films[:k], rest, part, *self.films[k + 1 :]), self.surface)
+
+    def turned(self, k: int, **changes: object) -> FilmStack:
+        """Film `k` with another material or state, the geometry untouched."""
+        films = list(self.films)
+        films[k] = replace(films[k], **changes)  # type: ignore[arg-type]
+        return FilmStack(self.grid, tuple(films), self.surface)
+
+    def _recut(self, films: list[Film]) -> FilmStack:
+        from flowemu.stack.surfaces import recut_surface
+        from flowemu.stack.topology import Topology
+
+        topology = Topology.of(self.grid, films)
+        present = np.zeros(len(films), bool)
+        for codes in (topology.code, topology.interval_code):
+            found = np.unique(codes)
+            present[found[found >= 0]] = True
+        present[0] = True
+        if not present.all():
+            films = [film for film, there in zip(films, present, strict=True) if there]
+            topology = Topology.of(self.grid, films)
+        stack = FilmStack(self.grid, tuple(films), recut_surface(self.grid, films, topology, self.surface))
+        stack.__dict__["topology"] = topology
+        return stack

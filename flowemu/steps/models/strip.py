@@ -1,0 +1,81 @@
+"""Stripping: a film goes wherever the open space reaches it."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+
+from flowemu.errors import StepError
+from flowemu.kernels import fronts
+from flowemu.stack.measure import film_volume
+from flowemu.stack.stack import FilmStack
+from flowemu.stack.wafer import Cut, Loss, Wafer
+
+
+def strip_film(wafer: Wafer, name: str, agent: str, tools: Any) -> Wafer:
+    """The wafer without the named film; what is buried of it stays.
+
+    Raises
+    ------
+    StepError
+        There is no such film, or nothing of it can be reached.
+    """
+    stack = wafer.stack
+    numbers = [k for k, film in enumerate(stack.films) if film.name == name]
+    if not numbers:
+        raise StepError(f"there is no film '{name}' on the wafer")
+    losses, whole, partly = [], set(), {}
+    for k in numbers:
+        reached = _reached_pieces(stack, k)
+        mine = _pieces(stack, k)
+        if not len(reached):
+            continue
+        if len(reached) == len(mine):
+            whole.add(k)
+        else:
+            partly[k] = _piece_field(stack, k, reached)
+        film = stack.films[k]
+        losses.append(Loss(name, film.material, 0.0, 0.0, 0.0, film_volume(film, stack.grid), True, True))
+    if not losses:
+        raise StepError(f"film '{name}' is buried; nothing of it can be reached")
+    after = stack.carve(partly).without(whole) if partly else stack.without(whole)
+    cut = Cut(tools.step, "strip", agent, 0.0, None, tuple(losses))
+    back = tuple(coat for coat in wafer.back if coat.name != name)
+    return wafer.now(after, cut, back=back, printed=None if name == "resist" else wafer.printed)
+
+
+def _pieces(stack: FilmStack, k: int) -> np.ndarray:
+    t = stack.topology
+    inner = t.inner
+    nodes = np.concatenate([np.flatnonzero(t.code.reshape(-1) == k), inner.node[inner.code == k]])
+    return np.unique(t.piece[nodes])
+
+
+def _reached_pieces(stack: FilmStack, k: int) -> np.ndarray:
+    """Roots of the pieces of film `k` that border on the open space."""
+    t = stack.topology
+    return np.unique(
+        fronts.bare_pieces(
+            t.samples, t.code.reshape(-1), t.strides, t.count, t.start, t.interval_code, t.piece, t.open_roots, k
+        )
+    )
+
+
+def _piece_field(stack: FilmStack, k: int, reached: np.ndarray) -> np.ndarray:
+    """A removed field that takes away the reached pieces whole, `(nz, ny, nx)` float32."""
+    t = stack.topology
+    value = np.full(t.code.shape, -np.float32(stack.band), np.float32)
+    roots = t.piece[: t.code.size].reshape(t.code.shape)
+    mine = (t.code == k) & np.isin(roots, reached)
+    value[mine] = stack.band
+    inner = t.inner
+    thin = (inner.code == k) & np.isin(t.piece[inner.node], reached)
+    flat = value.reshape(-1)
+    for end in (t.samples[inner.row[thin]], t.samples[inner.row[thin]] + t.strides[inner.direction[thin]]):
+        flat[end] = stack.band
+    known = value > 0
+    want = (t.row_of.reshape(t.code.shape) >= 0) & (t.code != k)
+    for _ in range(2):
+        value, known = fronts.spread_once(value, known, want)
+    return np.ascontiguousarray(t.on_grid(value))
