@@ -67,25 +67,25 @@ def label(text: str, x: float, y: float) -> gdstk.Label:
 
 
 def rotor(library: gdstk.Library) -> gdstk.Cell:
-    """Wheel with a bore of radius 8, eight windows, eight blades; pin of radius 4, flange of radius 12."""
+    """Wheel with a bore of radius 8, eight windows, eight blades; pin of radius 4, flange of radius 11."""
     cell = library.new_cell("rotor")
-    cell.add(*wheel(), disc(4, PIN), disc(12, CAP))
+    cell.add(*wheel(), disc(4, PIN), disc(11, CAP))
     cell.add(gdstk.Reference(dimple_cell(library, "rotor_dimple", 1.25, DIMPLE), (14, 0)))
     for k in range(1, 6):
         turn = k * pi / 3
         place = 14 * pow(1j, 2 * k / 3)
         cell.add(gdstk.Reference(library["rotor_dimple"], place, rotation=turn))
-    cell.add(label("rotor", 22.5, 0), label("pin", 0, 0))
+    cell.add(label("rotor", 23.5, 0), label("pin", 0, 0))
     return cell
 
 
 def wheel() -> list[gdstk.Polygon]:
     """Web, spokes, rim and blades in one piece."""
-    blades = [box(23, -1.5, 28, 1.5, ROTOR).rotate(k * pi / 4) for k in range(8)]
-    windows = gdstk.boolean(disc(21, ROTOR), disc(17, ROTOR), "not")
-    spokes = [box(16, -2, 22, 2, ROTOR).rotate((k + 0.5) * pi / 4) for k in range(8)]
+    blades = [box(24, -1.5, 29, 1.5, ROTOR).rotate(k * pi / 4) for k in range(8)]
+    windows = gdstk.boolean(disc(22, ROTOR), disc(18, ROTOR), "not")
+    spokes = [box(17, -2, 23, 2, ROTOR).rotate((k + 0.5) * pi / 4) for k in range(8)]
     cut = [*gdstk.boolean(windows, spokes, "not"), disc(8, ROTOR)]
-    return gdstk.boolean([disc(24, ROTOR), *blades], cut, "not", layer=ROTOR[0], datatype=ROTOR[1])
+    return gdstk.boolean([disc(25, ROTOR), *blades], cut, "not", layer=ROTOR[0], datatype=ROTOR[1])
 
 
 def dimple_cell(library: gdstk.Library, name: str, radius: float, on: tuple[int, int]) -> gdstk.Cell:

@@ -4,6 +4,8 @@ A part is held if it hangs together with the wafer. A loose one is moved through
 flood of small offsets, and turned about z: if it cannot leave it is captive, and its play along each axis is told;
 otherwise it is adrift, and the rinse takes it. A part that reaches a side of the window may be held outside it.
 
+Nameless slivers that come loose, such as stringers, are told together, one warning a film.
+
 An adrift part that never had an anchor is told by `missing-anchor` instead.
 """
 
@@ -15,7 +17,7 @@ from typing import Any
 from flowemu.findings import Finding
 from flowemu.registry import Check
 
-ADRIFT, CAPTIVE, CUT = "part-adrift", "part-captive", "part-cut-by-window"
+ADRIFT, CAPTIVE, CUT, RESIDUE = "part-adrift", "part-captive", "part-cut-by-window", "loose-residue"
 
 
 def run(view: Any) -> Iterator[Finding]:
@@ -24,7 +26,10 @@ def run(view: Any) -> Iterator[Finding]:
     from flowemu.stack.wafer import Loosened
 
     last = {event.part: event for event in view.events(Loosened)}
+    yield from _residue(view, [event for event in last.values() if event.sliver])
     for event in last.values():
+        if event.sliver:
+            continue
         centre = _centre(event.box)
         films = " and ".join(event.films)
         if event.state == "captive":
@@ -41,6 +46,17 @@ def run(view: Any) -> Iterator[Finding]:
             text = f"part {event.part} ({films}) is cut by the window's edge; whether it is held cannot be told"
             cause = "Widen the window, or name the side as a mirror if it is one."
             yield Finding(CUT, "note", event.step, event.films[0], event.part, centre, text, cause)
+
+
+def _residue(view: Any, slivers: list[Any]) -> Iterator[Finding]:
+    """One warning a film of which slivers came loose."""
+    for film in sorted({event.films[0] for event in slivers}):
+        mine = [event for event in slivers if event.films[0] == film]
+        worst = max(mine, key=lambda event: event.volume)
+        pieces = "a sliver" if len(mine) == 1 else f"{len(mine)} slivers"
+        text = f"{pieces} of film {film} came loose in {view.step_title(worst.step)}; the largest is {worst.volume:.2g} um3"
+        cause = "An earlier etch of the film left them, mostly on walls; a longer overetch there would clear them."
+        yield Finding(RESIDUE, "warning", worst.step, film, None, _centre(worst.box), text, cause)
 
 
 def _cause(view: Any, event: Any, lost: Any) -> str:
@@ -60,5 +76,5 @@ def _play(play: tuple[float | None, ...] | None) -> str:
     return ", ".join(f"{axis} -{low} +{high}" for axis, low, high in zip("xyz", texts[::2], texts[1::2], strict=True)) + " um"
 
 
-CHECK = Check("loose parts", (ADRIFT, CAPTIVE, CUT), "geometry", run)
+CHECK = Check("loose parts", (ADRIFT, CAPTIVE, CUT, RESIDUE), "geometry", run)
 """Common practice: a part that nothing holds after its release is lost in the rinse."""

@@ -23,7 +23,7 @@ def run(view: Any) -> Iterator[Finding]:
 
     last = {event.part: event for event in view.events(Loosened)}
     for event in last.values():
-        if event.state != "adrift":
+        if event.state != "adrift" or event.sliver:
             continue
         lost = lost_anchor(view, event)
         if lost is None or lost.mask is None or lost.distance <= 0:

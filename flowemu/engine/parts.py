@@ -15,7 +15,7 @@ DUST = 1.0  # cells^3: a nameless loose body below this is left out
 def part_rows(view: View) -> tuple[PartRow, ...]:
     """Every named part, then every loose body: what it is made of, how large, and whether it is held."""
     stack = view.wafer.stack
-    loosened = {event.part: event for event in view.events(Loosened)}
+    loosened = {event.part: event for event in view.events(Loosened) if not event.sliver}
     rows: dict[str, PartRow] = {}
     for part in find_parts(stack, view.tools.places):
         row = _row(stack, part, loosened.get(part.name))

@@ -32,8 +32,9 @@ def arrival_on_grid(
     Returns
     -------
     (nz, ny, nx) float32, s
-        +inf where blocked or not reached. Second order: a sphere of 5 cells' radius is right to 0.04 cell on
-        average and 0.11 at most over 60 cells; a plane front along an axis is exact, graded z included.
+        +inf where blocked or not reached. Second order: from a sphere of 5 cells' radius right to 0.04 cell on
+        average and 0.11 at most over 60 cells; round an obstacle's edge 0.07 and 0.25, from a point 0.15 and 0.35,
+        on either side; a plane front along an axis is exact, graded z included.
     """
     start = np.asarray(start, np.float32)
     slow = np.asarray(slowness, np.float32)

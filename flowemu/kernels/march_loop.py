@@ -69,7 +69,10 @@ def march(
     if finite.min() <= 0:
         raise ValueError("slowness must be above zero")
     if slowness.size > 1:
-        time[np.isinf(slowness) & np.isinf(time)] = np.nan
+        closed = np.isinf(slowness)
+        time[closed & np.isinf(time)] = np.nan
+        if finite.min() == finite.max() and not np.any(time[closed] < np.inf):
+            slowness = finite[:1]
     per_second = 1.0 / (BUCKET * weights[:, :, 0].min() * float(finite.min()))
     span = weights[:, :, 0].max() * float(finite.max()) * per_second + 3.0
     heads = np.full(1 << int(np.ceil(np.log2(min(span, MAX_BUCKETS)))), -1, np.int32)
@@ -111,10 +114,10 @@ def _alike(slowness, slow):
 
 @njit(cache=True, error_model="numpy", forceinline=True)
 def _upwind(time, front, nbr, weights, slowness, i, k, d, slow):
-    """Weight and foot of one axis in `sum of weight (t - foot)^2 = slow^2`; the weight is 0 if nothing is usable.
+    """Weight and foot of one axis in `sum of weight (t - foot)^2 = slow^2`, and whether a smooth front comes along it.
 
-    Second order needs two accepted nodes upwind, of node i's slowness: across a step in slowness it would give
-    node i up to a third of the step's time too early.
+    The weight is 0 if nothing is usable. Second order needs two accepted nodes upwind, of node i's slowness: across
+    a step in slowness it would give node i up to a third of the step's time too early.
     """
     each = np.int64(slowness.size > 1)
     below = _hop(nbr, i, d)
@@ -128,10 +131,11 @@ def _upwind(time, front, nbr, weights, slowness, i, k, d, slow):
     jj = _hop(nbr, j, e)
     second = np.float64(time[jj])
     curved = (second <= first) & _alike(slowness[j * each], slow) & _alike(slowness[jj * each], slow)
-    weight = weights[k, e, 2] if curved else weights[k, e, 1]
-    foot = first + weights[k, e, 3] * (first - second) if curved else first
+    weight = weights[k, e, 1 + np.int64(curved)]
+    foot = first + weights[k, e, 3] * (first - (second if curved else first))
     usable = first < np.inf
-    return (weight if usable else 0.0), (foot if usable else 0.0)
+    smooth = curved & usable & (first - second > 0.5 * slow * weights[k, e, 0])
+    return (weight if usable else 0.0), (foot if usable else 0.0), smooth
 
 
 @njit(cache=True, error_model="numpy", forceinline=True)
@@ -155,6 +159,25 @@ def _meet(wx, x, wy, y, wz, z, slow):
             wz = 0.0
     foot = x if wx > 0.0 else (y if wy > 0.0 else z)
     return foot + slow / np.sqrt(wx + wy + wz)
+
+
+@njit(cache=True, error_model="numpy")
+def _round_corner(time, front, nbr, weights, slowness, i, k, d, slow):
+    """Time in direction d of node i straight from the neighbours of i across it; +inf if none is usable.
+
+    That is the way of a front round an obstacle's edge and from a point, where no axis has a second-order slope of half
+    the slowness or more and the axes alone come late by up to 0.59 of a cell. No plane front comes later than the
+    straight way.
+    """
+    each = np.int64(slowness.size > 1)
+    soonest = np.inf
+    for e in range(6):
+        if e // 2 != d // 2 and _alike(slowness[i * each], slow):
+            m = _hop(nbr, i, e)
+            if time[m] < front and _alike(slowness[m * each], slow):
+                way = np.sqrt(weights[k, d ^ 1, 0] ** 2 + weights[k, e, 0] ** 2)
+                soonest = min(soonest, time[m] + slow * way)
+    return soonest
 
 
 @njit(cache=True, error_model="numpy", forceinline=True)
@@ -194,10 +217,12 @@ def _pass_on(time, front, nbr, plane, weights, slowness, heads, pool, state, per
             continue
         kj = _plane_beside(nbr, plane, k, j, d)
         slow = np.float64(slowness[j * each])
-        wx, x = _upwind(time, front, nbr, weights, slowness, j, kj, 0, slow)
-        wy, y = _upwind(time, front, nbr, weights, slowness, j, kj, 2, slow)
-        wz, z = _upwind(time, front, nbr, weights, slowness, j, kj, 4, slow)
+        wx, x, cx = _upwind(time, front, nbr, weights, slowness, j, kj, 0, slow)
+        wy, y, cy = _upwind(time, front, nbr, weights, slowness, j, kj, 2, slow)
+        wz, z, cz = _upwind(time, front, nbr, weights, slowness, j, kj, 4, slow)
         new = np.float32(t + _meet(wx, x - t, wy, y - t, wz, z - t, slow))
+        if not (cx | cy | cz):
+            new = min(new, np.float32(_round_corner(time, front, nbr, weights, slowness, i, kj, d, slow)))
         if new < old:
             time[j] = new
             bucket = _bucket(new, per_second)

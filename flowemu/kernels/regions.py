@@ -18,6 +18,7 @@ from numba import njit, prange
 
 MAX_INTERVALS = 24
 SLIVER = 1e-3  # shortest interval of an edge that counts, as a share of the edge
+CRACK = 0.02  # the same for a void between two solids: thinner ones come of cut corners, not of gaps
 
 # Edges of the division leave a sample towards these neighbours (dz, dy, dx).
 EDGE_STEPS = np.array(
@@ -61,6 +62,27 @@ def code_of(values, ti, bi, gi):
 
 
 @njit(cache=True)
+def _closed(code_out, end_out, m):
+    """Close the cracks of a partition: voids between two solids thinner than `CRACK`."""
+    q = 1
+    while q < m - 1:
+        if code_out[q] < 0 <= code_out[q - 1] and code_out[q + 1] >= 0 and end_out[q] - end_out[q - 1] < CRACK:
+            same = code_out[q - 1] == code_out[q + 1]
+            if not same:
+                end_out[q - 1] = 0.5 * (end_out[q - 1] + end_out[q])
+            shift = 2 if same else 1
+            if same:
+                end_out[q - 1] = end_out[q + 1]
+            for r in range(q, m - shift):
+                code_out[r] = code_out[r + shift]
+                end_out[r] = end_out[r + shift]
+            m -= shift
+        else:
+            q += 1
+    return m
+
+
+@njit(cache=True)
 def partition(va, vb, ti, bi, gi, code_out, end_out):
     """Cut the edge between two samples into intervals of one code.
 
@@ -99,7 +121,7 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
             m += 1
         low = high
     end_out[m - 1] = 1.0
-    return m
+    return _closed(code_out, end_out, m)
 
 
 @njit(cache=True, parallel=True)

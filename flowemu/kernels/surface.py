@@ -41,9 +41,23 @@ def _cosine(f, sf, g, sg, z, y, x, zc, dx, dy):
     return sf * sg * (ax * bx + ay * by + az * bz) / n if n > 0.1 else 0.0
 
 
+@njit(cache=True)
+def _stretched(distance, field, z, y, x, zc, dx, dy, coverage):
+    """A distance above zero from a plane, lengths across it counted by 1 / coverage."""
+    if not 0 < distance < np.inf:
+        return distance
+    gx, gy, gz = _slope(field, z, y, x, zc, dx, dy)
+    flat = gx * gx + gy * gy
+    norm = flat + gz * gz
+    return distance * np.sqrt(norm / (coverage * coverage * flat + gz * gz)) if norm > 1e-6 else distance
+
+
 @njit(cache=True, parallel=True)
-def lower_to_film(out, code, top, floor, gone, has_floor, has_gone, zc, dx, dy, band):
-    """Lower `out` at void samples to their distance from one film's solid, up to `band`."""
+def lower_to_film(out, code, top, floor, gone, has_floor, has_gone, zc, dx, dy, band, coverage):
+    """Lower `out` at void samples to their distance from one film's solid, up to `band`.
+
+    Below a coverage of 1 lengths across are counted longer, by 1 / coverage.
+    """
     nz, ny, nx = code.shape
     for z in prange(nz):
         for y in range(ny):
@@ -58,6 +72,10 @@ def lower_to_film(out, code, top, floor, gone, has_floor, has_gone, zc, dx, dy, 
                 g = gone[z, y, x] if has_gone else -np.inf
                 if b >= limit or g >= limit:
                     continue
+                if coverage < 1.0:
+                    a = _stretched(a, top, z, y, x, zc, dx, dy, coverage)
+                    b = _stretched(b, floor, z, y, x, zc, dx, dy, coverage)
+                    g = _stretched(g, gone, z, y, x, zc, dx, dy, coverage)
                 if a > 0 and g > 0:
                     d = wedge(a, g, _cosine(top, 1.0, gone, 1.0, z, y, x, zc, dx, dy))
                 elif b > 0 and g > 0:

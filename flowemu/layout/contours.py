@@ -103,9 +103,7 @@ def outlines(polygons: Sequence[np.ndarray], step: float) -> Loops:
     raster = [np.rint((points - centre) / step).astype(np.int64) for points in shapes]
     edges = np.concatenate([np.hstack([p, np.roll(p, -1, axis=0)]) for p in raster])
     edges = edges[np.any(edges[:, :2] != edges[:, 2:], axis=1)]
-    loops = [_without_straight_points(loop) for loop in _chain(_cancel(edges))]
-    scaled = [centre + step * loop for loop in loops if len(loop) >= 3]
-    return [loop for loop in scaled if abs(signed_area(loop)) > 4 * step * _perimeter(loop)]
+    return [centre + step * loop for loop in _tidy(_chain(_cancel(edges)))]
 
 
 def _points(polygon: Any) -> np.ndarray:
@@ -117,38 +115,48 @@ def _axis_parallel(points: np.ndarray) -> bool:
     return bool(np.all(step.min(axis=1) == 0.0))
 
 
-def _perimeter(loop: np.ndarray) -> float:
-    return float(np.hypot(*(np.roll(loop, -1, axis=0) - loop).T).sum())
-
-
 def _cancel(edges: np.ndarray) -> np.ndarray:
     """Edges `(m, 4)` int64 with opposed overlapping stretches taken out."""
+    line, forward = _lines(edges)
+    ahead, all_on = np.bincount(line, weights=forward), np.bincount(line)
+    mixed = ((ahead > 0) & (ahead < all_on))[line]
+    if not mixed.any():
+        return edges
+    return np.concatenate([edges[~mixed], _net_stretches(edges[mixed], line[mixed])])
+
+
+def _lines(edges: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """For each edge the number of the straight line it lies on, and whether it runs along it in rising x (or y)."""
     run = edges[:, 2:] - edges[:, :2]
     unit = run // np.gcd(np.abs(run[:, 0]), np.abs(run[:, 1]))[:, None]
     forward = (unit[:, 0] > 0) | ((unit[:, 0] == 0) & (unit[:, 1] > 0))
     unit = np.where(forward[:, None], unit, -unit)
-    offset = unit[:, 0] * edges[:, 1] - unit[:, 1] * edges[:, 0]
-    _, line = np.unique(np.column_stack([unit, offset]), axis=0, return_inverse=True)
-    line = line.reshape(-1)
-    ahead = np.bincount(line, weights=forward)
-    mixed = ((ahead > 0) & (ahead < np.bincount(line)))[line]
-    kept = [edges[~mixed]]
-    for number in np.unique(line[mixed]):
-        kept.append(_net_stretches(edges[line == number], forward[line == number]))
-    return np.concatenate(kept)
+    key = np.column_stack([unit, unit[:, 0] * edges[:, 1] - unit[:, 1] * edges[:, 0]])
+    order, first = _groups(key)
+    line = np.empty(len(edges), dtype=np.int64)
+    line[order] = np.cumsum(first) - 1
+    return line, forward
 
 
-def _net_stretches(edges: np.ndarray, forward: np.ndarray) -> np.ndarray:
-    """Stretches of one straight line `(k, 4)` that more edges run along one way than the other."""
-    axis = 0 if edges[0, 0] != edges[0, 2] else 1
-    places = np.unique(np.concatenate([edges[:, :2], edges[:, 2:]]), axis=0)
-    places = places[np.argsort(places[:, axis])]
-    ends = np.searchsorted(places[:, axis], np.sort(edges[:, [axis, axis + 2]], axis=1))
-    net = np.zeros(len(places), dtype=np.int64)
-    sign = np.where(forward, 1, -1)
-    np.add.at(net, ends[:, 0], sign)
-    np.add.at(net, ends[:, 1], -sign)
+def _groups(rows: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """The order that sorts int rows `(m, k)` by their columns, and which of the sorted ones differ from the last."""
+    order = np.lexsort(rows.T[::-1])
+    ranked = rows[order]
+    first = np.ones(len(rows), dtype=bool)
+    first[1:] = np.any(ranked[1:] != ranked[:-1], axis=1)
+    return order, first
+
+
+def _net_stretches(edges: np.ndarray, line: np.ndarray) -> np.ndarray:
+    """Stretches `(k, 4)` of straight lines that more edges run along one way than the other."""
+    ends = np.concatenate([edges[:, :2], edges[:, 2:]])
+    order, first = _groups(np.column_stack([np.tile(line, 2), ends]))
+    place = np.cumsum(first) - 1
+    net = np.zeros(place[-1] + 1, dtype=np.int64)
+    # +1 at an edge's start and -1 at its end: summed along a line, the edges that run forward less those back.
+    np.add.at(net, place, np.where(order < len(edges), 1, -1))
     net = np.cumsum(net)[:-1]
+    places = ends[order][first]
     low, high = places[:-1], places[1:]
     along = np.where((net > 0)[:, None], np.hstack([low, high]), np.hstack([high, low]))
     return along[net != 0]
@@ -162,19 +170,16 @@ def _chain(edges: np.ndarray) -> Loops:
     loops = []
     for first in list(leaving):
         while leaving[first]:
-            loop = _walk(first, leaving)
-            if loop is not None:
-                loops.append(np.array(loop, dtype=np.int64))
+            loops.append(np.array(_walk(first, leaving), dtype=np.int64))
     return loops
 
 
-def _walk(first: Point, leaving: dict[Point, list[Point]]) -> list[Point] | None:
+def _walk(first: Point, leaving: dict[Point, list[Point]]) -> list[Point]:
+    """One loop from `first` back to it; as many edges reach each point as leave it, so it closes."""
     loop, here, there = [first], first, leaving[first].pop()
     while there != first:
         loop.append(there)
         ways = leaving[there]
-        if not ways:
-            return None
         turn = max(range(len(ways)), key=lambda k: _turn(here, there, ways[k])) if len(ways) > 1 else 0
         here, there = there, ways.pop(turn)
     return loop
@@ -187,7 +192,21 @@ def _turn(before: Point, here: Point, after: Point) -> float:
     return float(np.arctan2(float(ax * by - ay * bx), float(ax * bx + ay * by)))
 
 
-def _without_straight_points(loop: np.ndarray) -> np.ndarray:
-    into = loop - np.roll(loop, 1, axis=0)
-    out = np.roll(loop, -1, axis=0) - loop
-    return loop[into[:, 0] * out[:, 1] != into[:, 1] * out[:, 0]]
+def _tidy(loops: Loops) -> Loops:
+    """Loops of int64 points without points on straight edges; loops a few raster steps thin are left out."""
+    if not loops:
+        return []
+    points, lengths = np.concatenate(loops), np.array([len(loop) for loop in loops])
+    stops = np.cumsum(lengths)
+    starts = stops - lengths
+    after = np.arange(1, len(points) + 1)
+    after[stops - 1] = starts
+    out = points[after] - points
+    into = np.empty_like(out)
+    into[after] = out
+    corner = into[:, 0] * out[:, 1] != into[:, 1] * out[:, 0]
+    x, y = (points - np.repeat(points[starts], lengths, axis=0)).T.astype(float)
+    area = 0.5 * np.add.reduceat(x * y[after] - x[after] * y, starts)
+    perimeter = np.add.reduceat(np.hypot(*out.T.astype(float)), starts)
+    solid = np.flatnonzero(np.abs(area) > 4 * perimeter)
+    return [points[starts[k] : stops[k]][corner[starts[k] : stops[k]]] for k in solid]

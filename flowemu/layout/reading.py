@@ -17,7 +17,7 @@ import numpy as np
 from flowemu.errors import LayoutError
 from flowemu.layout.layout import Layout, Pair, missing_cell
 
-TIME_LIMIT = 60.0
+TIME_LIMIT = 120.0
 """Seconds after which a reader is taken to hang on a damaged file."""
 GDSII_START = b"\x00\x06\x00\x02"
 OASIS_START = b"%SEMI-OASIS\r\n"

@@ -13,7 +13,7 @@ from flowemu.output import theme
 from flowemu.output.frame import Frame, frame_of, rings_of
 from flowemu.output.labels import label_films
 from flowemu.output.marks import findings_near, mark_findings, scale_bars
-from flowemu.output.panels import draw_findings, draw_legend, draw_masks, name_masks
+from flowemu.output.panels import LINE_IN, ROW_IN, draw_findings, draw_legend, draw_masks, name_masks
 from flowemu.output.section import Section
 from flowemu.output.theme import Look, looks_of
 
@@ -48,7 +48,7 @@ UNDATED: dict[str, dict[str, Any]] = {
 }
 LEFT_IN, RIGHT_IN, GAP_IN, BELOW_IN, ABOVE_IN = 0.75, 0.2, 0.3, 0.62, 0.95
 PANEL_IN = 2.35
-LEAST_IN = 3.3
+THUMB_IN = 1.45
 OUTLINE_PT = 0.45
 THIN_PT = 1.2
 THIN_LINE_PT = 0.9
@@ -78,8 +78,7 @@ def draw_section(
 
     frame = frame_of(section, stretch)
     near = findings_near(section, findings)
-    foot = BELOW_IN + 0.17 * len(near) + (0.12 if near else 0.0)
-    height = max(frame.height_in + ABOVE_IN + foot, LEAST_IN)
+    height = max(frame.height_in + ABOVE_IN + foot_height(len(near)), panel_height(section, masks))
     width = LEFT_IN + max(frame.width_in, 4.0) + GAP_IN + PANEL_IN + RIGHT_IN
     with matplotlib.rc_context(STYLE):
         figure = Figure(figsize=(width, height), dpi=DPI, facecolor=theme.PAPER)
@@ -95,6 +94,17 @@ def draw_section(
         draw_panel(figure, left, (width, height), section, looks, masks, window)
         draw_findings(figure, near, LEFT_IN / width, (below - BELOW_IN) / height, height)
     return figure
+
+
+def foot_height(findings: int) -> float:
+    """Room for the axis, the scales and the listed findings, inches."""
+    return BELOW_IN + (LINE_IN * findings + 0.12 if findings else 0.0)
+
+
+def panel_height(section: Section, masks: Mapping[str, Sequence[np.ndarray]] | None) -> float:
+    """Room that the column beside the section needs, inches."""
+    shown = sum(not polygon.is_empty for _, polygon in section.films)
+    return 0.4 + ROW_IN * shown + (THUMB_IN + 0.28 + 3 * LINE_IN if masks else 0.0)
 
 
 def draw_films(axes: Axes, section: Section, looks: Sequence[Look], frame: Frame) -> None:
@@ -177,10 +187,9 @@ def draw_panel(
     width, height = size
     top = height - 0.2
     if masks:
-        thumb = 1.45
-        axes = figure.add_axes((left / width, (top - thumb) / height, PANEL_IN / width, thumb / height))
+        axes = figure.add_axes((left / width, (top - THUMB_IN) / height, PANEL_IN / width, THUMB_IN / height))
         draw_masks(axes, masks, section.line, window)
-        top -= thumb + 0.18
+        top -= THUMB_IN + 0.18
         top -= name_masks(figure, list(masks), left, top, PANEL_IN) + 0.1
     draw_legend(figure, section, looks, left, top)
 

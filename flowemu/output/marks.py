@@ -75,9 +75,10 @@ def findings_near(section: Section, findings: Sequence[Finding]) -> list[tuple[F
 def mark_findings(axes: Axes, near: Sequence[tuple[Finding, float, float]]) -> None:
     """A numbered mark at each finding's place."""
     bottom, top = axes.get_ylim()
+    inset = 0.04 * (top - bottom)
     for i, (finding, along, height) in enumerate(near):
         colour = theme.SEVERITY.get(finding.severity, theme.INK)
-        place = (along, float(np.clip(height, bottom, top)))
+        place = (along, float(np.clip(height, bottom + inset, top - inset)))
         axes.plot(
             *place,
             marker="o",

@@ -42,14 +42,19 @@ def recut_surface(grid: Grid, films: Sequence[Film], topology: Topology, old: np
     return np.where(same, old, new)
 
 
-def distance_in_void(grid: Grid, films: Sequence[Film], code: np.ndarray, band: float) -> np.ndarray:
-    """Distance of every void sample to the nearest film, at most `band`; `band` in the solid too."""
+def distance_in_void(
+    grid: Grid, films: Sequence[Film], code: np.ndarray, band: float, coverage: float = 1.0
+) -> np.ndarray:
+    """Distance of every void sample to the nearest film, at most `band`; `band` in the solid too.
+
+    Below a coverage of 1 lengths across are counted longer, by 1 / coverage.
+    """
     out = np.full(grid.shape, np.float32(band), np.float32)
     for film in films:
         floor = film.top if film.floor is None else film.floor
         gone = film.top if film.gone is None else film.gone
         kernel.lower_to_film(
             out, code, film.top, floor, gone, film.floor is not None, film.gone is not None,
-            grid.z, grid.cell, grid.cell, np.float32(band),
+            grid.z, grid.cell, grid.cell, np.float32(band), coverage,
         )  # fmt: skip
     return out

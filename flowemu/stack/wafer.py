@@ -85,7 +85,10 @@ class Cut:
 
 @dataclass(frozen=True, eq=False)
 class Loosened:
-    """A body that nothing holds was found loose after a release; see `stack.loose`."""
+    """A body that nothing holds was found loose after a release; see `stack.loose`.
+
+    `sliver` marks a nameless one too small to be a part.
+    """
 
     step: int
     part: str
@@ -96,6 +99,7 @@ class Loosened:
     play: tuple[float | None, ...] | None
     searched: str
     columns: np.ndarray
+    sliver: bool = False
 
 
 @dataclass(frozen=True)

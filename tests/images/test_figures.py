@@ -14,6 +14,8 @@ from flowemu.output.frame import frame_of, round_length
 from flowemu.output.labels import spread
 from flowemu.output.marks import findings_near
 from flowemu.output.section import section_polygons
+from flowemu.stack.film import Film
+from flowemu.stack.stack import FilmStack
 
 LINE = [(-30.0, 0.0), (30.0, 0.0)]
 LOST = Finding("missing-anchor", "error", 14, "poly", "plate", (-2.0, 0.5, 2.6), "plate is adrift.", "It lay on glass.")
@@ -115,3 +117,27 @@ def test_labels_do_not_overlap() -> None:
     assert gaps.min() > -1.0
     assert places[0] - 20.0 >= -1e-9
     assert places[-1] + 25.0 <= 400.0 + 1e-9
+
+
+def test_long_legend_stays_on_the_sheet(shapes_of_many_films, bridge_masks) -> None:
+    """Fourteen films beside a flat section: every text lies within the sheet."""
+    figure = draw_section(shapes_of_many_films, "Many", "after step 30", bridge_masks, findings=[LOST])
+    image_box = figure.bbox
+    pixels(figure)
+    for text in figure.texts:
+        box = text.get_window_extent()
+        assert box.y0 >= image_box.y0, text.get_text()
+        assert box.y1 <= image_box.y1, text.get_text()
+
+
+@pytest.fixture(scope="module")
+def shapes_of_many_films(bridge_stack):
+    """Fourteen flat films of 0.1 um on one another."""
+    grid = bridge_stack.grid
+    height = np.broadcast_to(grid.z[:, None, None], grid.shape).astype(np.float32)
+    films = [Film("wafer", "silicon", None, 0, height)]
+    films += [
+        Film(f"layer{k}", ("psg", "nitride")[k % 2], None, k, height - 0.1 * k, height - 0.1 * (k - 1))
+        for k in range(1, 14)
+    ]
+    return section_polygons(FilmStack(grid, tuple(films), films[-1].top), LINE)

@@ -8,6 +8,7 @@ from flowemu.kernels import coating as kernel
 from flowemu.kernels.redistance import extend_distance, redistance
 from flowemu.stack.film import Film
 from flowemu.stack.stack import FilmStack
+from flowemu.stack.surfaces import distance_in_void
 
 EXACT = 2.0  # cells above the surface whose distance is taken as it stands; beyond it is marched
 
@@ -21,7 +22,11 @@ def coat(stack: FilmStack, film: Film, thickness: float, coverage: float = 1.0) 
     grid, surface = stack.grid, stack.surface
     open_space = np.ascontiguousarray(stack.topology.on_grid(stack.topology.open_space))
     width = kernel.extent(surface, grid.z, grid.cell, grid.cell, coverage)
-    near = np.where(open_space & (surface < EXACT * grid.cell), np.maximum(surface, 0) / width, np.float32(np.inf))
+    away = np.maximum(surface, 0)
+    if coverage < 1.0:
+        code = np.ascontiguousarray(stack.topology.on_grid(stack.topology.code))
+        away = distance_in_void(grid, stack.films, code, stack.band, coverage)
+    near = np.where(open_space & (surface < EXACT * grid.cell), away, np.float32(np.inf))
     across = grid.cell / coverage
     limit = thickness + stack.band / coverage
     far = extend_distance(near.astype(np.float32), open_space, across, across, grid.z, limit)

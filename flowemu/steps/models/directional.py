@@ -8,7 +8,8 @@ from functools import cached_property
 
 import numpy as np
 
-from flowemu.kernels import beam, fronts
+from flowemu.kernels import beam
+from flowemu.stack.removed import complete
 from flowemu.stack.stack import FilmStack
 
 FLAT = 1.10  # a column whose film is thicker than this times the usual is a wall, not the flat
@@ -92,7 +93,6 @@ class Beam:
 
     def removed(self, time: float) -> dict[int, np.ndarray]:
         """Removed field of each etched film after `time` s, `(nz, ny, nx)` float32 um."""
-        t = self.stack.topology
         floor, entry, stop, _ = beam.strike(*self._edges(), self.slowness, time)
         struck = np.unique(stop[stop >= 0])
         out = {}
@@ -100,7 +100,7 @@ class Beam:
             if rate > 0:
                 field = self._removed_film(k, floor, entry, stop, struck)
                 if field is not None:
-                    out[k] = np.ascontiguousarray(t.on_grid(field))
+                    out[k] = field
         return out
 
     def _removed_film(
@@ -132,7 +132,12 @@ class Beam:
         lateral[eroded] = np.inf
         both = (below < 0) & (lateral < 0)
         value = np.where(both, -np.hypot(below, lateral), np.minimum(below, lateral))
-        return _spread(self.stack, k, sample, value)
+        known = np.zeros(t.code.size, bool)
+        known[sample] = True
+        field = np.zeros(t.code.size, np.float32)
+        band = self.stack.band
+        field[sample] = np.clip(value, -band, band)
+        return complete(self.stack, field, known)
 
     def _side_distance(self, k: int, struck: np.ndarray) -> np.ndarray | None:
         """Planar distance to the nearest wall of the masks above film `k`, positive in openings."""
@@ -169,18 +174,3 @@ def _carry_sideways(known: np.ndarray, *maps: np.ndarray) -> tuple[np.ndarray, .
         return maps
     nearest = distance_transform_edt(~known, return_distances=False, return_indices=True)
     return tuple(m[tuple(nearest)] for m in maps)
-
-
-def _spread(stack: FilmStack, k: int, sample: np.ndarray, value: np.ndarray) -> np.ndarray:
-    """A film's removed field from its values at the film's samples, carried two samples outward."""
-    t = stack.topology
-    band = np.float32(stack.band)
-    field = np.full(t.code.size, -band, np.float32)
-    known = np.zeros(t.code.size, bool)
-    field[sample] = np.clip(value, -band, band)
-    known[sample] = True
-    want = t.row_of.reshape(t.code.shape) >= 0
-    field, known = field.reshape(t.code.shape), known.reshape(t.code.shape)
-    for _ in range(2):
-        field, known = fronts.spread_once(field, known, want)
-    return field

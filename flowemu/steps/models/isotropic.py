@@ -10,6 +10,7 @@ import numpy as np
 from flowemu.kernels import fronts, surface
 from flowemu.kernels.march import arrival_on_graph
 from flowemu.kernels.regions import STEP_OF_BITS
+from flowemu.stack.removed import complete
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.topology import Topology
 
@@ -112,11 +113,7 @@ class Arrival:
             outside = distance_outside(stack, topology, k)
             value[bare] = time * rate + outside[bare]
             known |= bare
-        want = topology.row_of.reshape(topology.code.shape) >= 0
-        value, known = value.reshape(topology.code.shape), known.reshape(topology.code.shape)
-        for _ in range(2):
-            value, known = fronts.spread_once(value, known, want)
-        return np.ascontiguousarray(topology.on_grid(value))
+        return complete(stack, value, known)
 
 
 def distance_outside(stack: FilmStack, topology: Topology, k: int) -> np.ndarray:
@@ -132,6 +129,7 @@ def distance_outside(stack: FilmStack, topology: Topology, k: int) -> np.ndarray
     surface.lower_to_film(
         out, topology.code, of(fields.top[k]), of(fields.floor[k]), of(fields.gone[k]),
         bool(fields.floor[k] >= 0), bool(fields.gone[k] >= 0), grid.z, grid.cell, grid.cell, np.float32(stack.band),
+        1.0,
     )  # fmt: skip
     return out.reshape(-1)
 

@@ -6,13 +6,14 @@ from typing import Any
 
 import numpy as np
 
-from flowemu.kernels import fronts
 from flowemu.stack.bodies import Part, box_and_volume, find_parts, part_columns
 from flowemu.stack.loose import judge
+from flowemu.stack.removed import whole_pieces
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.wafer import Loosened, Wafer
 
-DUST = 1.0  # cells^3: a nameless loose body smaller than this is residue that the rinse takes
+DUST = 1.0  # cells^3: a nameless loose body smaller than this is rounding, and the rinse takes it
+SLIVER = 64.0  # cells^3: one smaller than this is residue and not a part
 
 
 def let_go(wafer: Wafer, tools: Any) -> Wafer:
@@ -26,12 +27,19 @@ def let_go(wafer: Wafer, tools: Any) -> Wafer:
         if not part.named and volume < DUST * stack.grid.cell**3:
             gone.append(part)
             continue
+        sliver = not part.named and volume < SLIVER * stack.grid.cell**3
+        names = tuple(stack.films[k].name for k in sorted(part.films))
+        if sliver:
+            events.append(
+                Loosened(tools.step, part.name, names, "adrift", volume, box, None, "", part_columns(stack, part), True)  # type: ignore[arg-type]
+            )
+            gone.append(part)
+            continue
         if part.at_side:
             state, play, searched = "cut by the window", None, "its end lies outside the window"
         else:
             verdict = judge(stack, part)
             state, play, searched = verdict.state, verdict.play, verdict.searched
-        names = tuple(stack.films[k].name for k in sorted(part.films))
         events.append(
             Loosened(tools.step, part.name, names, state, volume, box, play, searched, part_columns(stack, part))  # type: ignore[arg-type]
         )
@@ -42,22 +50,6 @@ def let_go(wafer: Wafer, tools: Any) -> Wafer:
 
 def _without(stack: FilmStack, parts: list[Part]) -> FilmStack:
     """The stack without the given bodies."""
-    t = stack.topology
-    fields = {}
     pieces = np.array(sorted(set().union(*(part.pieces for part in parts))))
-    roots = t.piece[: t.code.size].reshape(t.code.shape)
-    inner = t.inner
-    thin_gone = np.isin(t.piece[inner.node], pieces)
-    for k in sorted(set().union(*(part.films for part in parts))):
-        value = np.full(t.code.shape, -np.float32(stack.band), np.float32)
-        value[(t.code == k) & np.isin(roots, pieces)] = stack.band
-        thin = thin_gone & (inner.code == k)
-        flat = value.reshape(-1)
-        for end in (t.samples[inner.row[thin]], t.samples[inner.row[thin]] + t.strides[inner.direction[thin]]):
-            flat[end] = stack.band
-        known = value > 0
-        want = (t.row_of.reshape(t.code.shape) >= 0) & (t.code != k)
-        for _ in range(2):
-            value, known = fronts.spread_once(value, known, want)
-        fields[k] = np.ascontiguousarray(t.on_grid(value))
-    return stack.carve(fields)
+    films = sorted(set().union(*(part.films for part in parts)))
+    return stack.carve({k: whole_pieces(stack, k, pieces) for k in films})

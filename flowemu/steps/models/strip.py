@@ -9,6 +9,7 @@ import numpy as np
 from flowemu.errors import StepError
 from flowemu.kernels import fronts
 from flowemu.stack.measure import film_volume
+from flowemu.stack.removed import whole_pieces
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.wafer import Cut, Loss, Wafer
 
@@ -31,10 +32,10 @@ def strip_film(wafer: Wafer, name: str, agent: str, tools: Any) -> Wafer:
         mine = _pieces(stack, k)
         if not len(reached):
             continue
-        if len(reached) == len(mine):
+        if np.isin(mine, reached).all():
             whole.add(k)
         else:
-            partly[k] = _piece_field(stack, k, reached)
+            partly[k] = whole_pieces(stack, k, reached)
         film = stack.films[k]
         losses.append(Loss(name, film.material, 0.0, 0.0, 0.0, film_volume(film, stack.grid), True, True))
     if not losses:
@@ -46,10 +47,9 @@ def strip_film(wafer: Wafer, name: str, agent: str, tools: Any) -> Wafer:
 
 
 def _pieces(stack: FilmStack, k: int) -> np.ndarray:
+    """Roots of the pieces of film `k` that hold a sample; a sliver without one goes with the rest."""
     t = stack.topology
-    inner = t.inner
-    nodes = np.concatenate([np.flatnonzero(t.code.reshape(-1) == k), inner.node[inner.code == k]])
-    return np.unique(t.piece[nodes])
+    return np.unique(t.piece[np.flatnonzero(t.code.reshape(-1) == k)])
 
 
 def _reached_pieces(stack: FilmStack, k: int) -> np.ndarray:
@@ -60,22 +60,3 @@ def _reached_pieces(stack: FilmStack, k: int) -> np.ndarray:
             t.samples, t.code.reshape(-1), t.strides, t.count, t.start, t.interval_code, t.piece, t.open_roots, k
         )
     )
-
-
-def _piece_field(stack: FilmStack, k: int, reached: np.ndarray) -> np.ndarray:
-    """A removed field that takes away the reached pieces whole, `(nz, ny, nx)` float32."""
-    t = stack.topology
-    value = np.full(t.code.shape, -np.float32(stack.band), np.float32)
-    roots = t.piece[: t.code.size].reshape(t.code.shape)
-    mine = (t.code == k) & np.isin(roots, reached)
-    value[mine] = stack.band
-    inner = t.inner
-    thin = (inner.code == k) & np.isin(t.piece[inner.node], reached)
-    flat = value.reshape(-1)
-    for end in (t.samples[inner.row[thin]], t.samples[inner.row[thin]] + t.strides[inner.direction[thin]]):
-        flat[end] = stack.band
-    known = value > 0
-    want = (t.row_of.reshape(t.code.shape) >= 0) & (t.code != k)
-    for _ in range(2):
-        value, known = fronts.spread_once(value, known, want)
-    return np.ascontiguousarray(t.on_grid(value))

@@ -1,0 +1,64 @@
+"""Removed fields made whole: from values at a film's own samples to distances all around it."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from flowemu.kernels import fronts
+from flowemu.kernels.redistance import redistance
+from flowemu.stack.stack import BAND, FilmStack
+from flowemu.stack.topology import Topology
+
+RINGS = int(BAND) + 1
+
+
+def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray) -> np.ndarray:
+    """A removed field over the grid, `(nz, ny, nx)` float32 um, positive where the film goes.
+
+    Parameters
+    ----------
+    value, known : flat or shaped as the topology's samples, float32 and bool
+        What is known at and right beside the film's samples. It is carried outward as it is, and then
+        made a distance again except where it changes sign.
+    """
+    t, grid = stack.topology, stack.grid
+    value = value.reshape(t.code.shape).astype(np.float32)
+    known = known.reshape(t.code.shape)
+    out = np.full(t.code.shape, -np.float32(stack.band), np.float32)
+    if not known.any():
+        return np.ascontiguousarray(t.on_grid(out))
+    box = _box(known)
+    near, there = np.ascontiguousarray(value[box]), np.ascontiguousarray(known[box])
+    everywhere = np.ones(near.shape, bool)
+    for _ in range(RINGS):
+        near, there = fronts.spread_once(near, there, everywhere)
+    near = np.where(there, near, -np.float32(stack.band))
+    out[box] = redistance(near, grid.cell, grid.cell, grid.z[box[0]], stack.band)
+    return np.ascontiguousarray(t.on_grid(out))
+
+
+def _box(known: np.ndarray) -> tuple[slice, slice, slice]:
+    """The box of what is known, grown by the rings that it is carried outward."""
+    out = []
+    for axis in range(3):
+        at = np.flatnonzero(known.any(axis=tuple({0, 1, 2} - {axis})))
+        out.append(slice(max(0, int(at[0]) - RINGS), min(known.shape[axis], int(at[-1]) + RINGS + 1)))
+    return out[0], out[1], out[2]
+
+
+def whole_pieces(stack: FilmStack, k: int, pieces: np.ndarray) -> np.ndarray:
+    """A removed field that takes away the listed pieces of film `k` and leaves its others."""
+    t: Topology = stack.topology
+    roots = t.piece[: t.code.size]
+    code = t.code.reshape(-1)
+    inner = t.inner
+    value = np.full(t.code.size, -np.float32(stack.band), np.float32)
+    known = code == k
+    value[known & np.isin(roots, pieces)] = stack.band
+    mine = inner.code == k
+    goes = np.where(np.isin(t.piece[inner.node], pieces), np.float32(stack.band), -np.float32(stack.band))
+    for end in (t.samples[inner.row], t.samples[inner.row] + t.strides[inner.direction]):
+        at = mine & ~known[end]
+        value[end[at]] = goes[at]
+        known[end[at]] = True
+    return complete(stack, value, known)
