@@ -76,8 +76,8 @@ def _time_at(
 ) -> float:
     """Time of a node from its final neighbours: each axis takes the side from which it would be reached first.
 
-    Where no axis has second order and half the slowness, the straight way counts too, from the neighbours of the node `via` across the
-    axis that leads from it to node i.
+    Where no axis has a second-order slope of half the slowness or more, the straight way counts too, from the
+    neighbours of the node `via` across the axis that leads from it to node i.
     """
     feet, steep_axes = [], 0
     for axis in range(3):

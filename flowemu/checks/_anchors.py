@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from flowemu.stack.wafer import Cut, Laid, Loosened, Printed
+if TYPE_CHECKING:
+    from flowemu.stack.wafer import Laid, Loosened, Printed
 
 
 @dataclass(frozen=True)
@@ -29,6 +30,8 @@ class Lost:
 
 def lost_anchor(view: Any, event: Loosened) -> Lost | None:
     """The missing anchor of an adrift part; None where what it rested on does not tell."""
+    from flowemu.stack.wafer import Cut
+
     laid = _first_laid(view, event)
     if laid is None:
         return None
@@ -37,10 +40,8 @@ def lost_anchor(view: Any, event: Loosened) -> Lost | None:
     if len(under) == 0:
         return None
     rested = laid.names[int(np.bincount(under).argmax())]
-    removed = next(
-        (e.step for e in reversed(view.events(Cut)) if e.step <= event.step and any(l.film == rested for l in e.losses)),
-        None,
-    )
+    cuts = [e for e in view.events(Cut) if e.step <= event.step and any(loss.film == rested for loss in e.losses)]
+    removed = cuts[-1].step if cuts else None
     opening = _nearest_opening(view, event, laid.step, rested)
     if opening is None:
         return Lost(laid.film, rested, removed, None, None, float("inf"), None)
@@ -50,22 +51,28 @@ def lost_anchor(view: Any, event: Loosened) -> Lost | None:
 
 def _first_laid(view: Any, event: Loosened) -> Laid | None:
     """When the oldest film of the part was put down."""
+    from flowemu.stack.wafer import Laid
+
     laid = [e for e in view.events(Laid) if e.film in event.films]
     return min(laid, key=lambda e: e.step) if laid else None
 
 
-def _nearest_opening(view: Any, event: Loosened, before: int, film: str) -> tuple[Printed, float, tuple[float, float]] | None:  # fmt: skip
+def _nearest_opening(
+    view: Any, event: Loosened, before: int, film: str
+) -> tuple[Printed, float, tuple[float, float]] | None:
     """The printed mask through which `film` was cut whole, its distance from the part, and where it opens."""
+    from flowemu.stack.wafer import Cut, Printed
+
     grid = view.wafer.stack.grid
     through = [
         cut for cut in view.events(Cut)
-        if cut.step < before and cut.mask and any(l.film == film and l.through for l in cut.losses)
+        if cut.step < before and cut.mask and any(loss.film == film and loss.through for loss in cut.losses)
     ]  # fmt: skip
     best = None
     for cut in through:
         printed = [p for p in view.events(Printed) if p.mask == cut.mask and p.step < cut.step][-1]
         away = np.where(event.columns, -printed.opened, np.inf)
-        iy, ix = np.unravel_index(int(np.argmin(away)), away.shape)
+        iy, ix = (int(i) for i in np.unravel_index(int(np.argmin(away)), away.shape))
         distance = float(away[iy, ix])
         place = _opening_place(printed.opened, iy, ix, grid)
         if best is None or distance < best[1]:

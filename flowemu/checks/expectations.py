@@ -27,9 +27,11 @@ def run(view: Any) -> Iterator[Finding]:
             at = None
         else:
             x, y = outcome.at
-            text = f"film {outcome.film} is expected to measure {outcome.wanted} at ({x:g}, {y:g}) um, but {outcome.found}"
+            place = f"at ({x:g}, {y:g}) um"
+            text = f"film {outcome.film} is expected to measure {outcome.wanted} {place}, but {outcome.found}"
             at = (x, y)
-        yield Finding(CODE, "error", view.step, outcome.film, outcome.part, at, text, "The flow's expect section says so.")
+        cause = "The flow's expect section says so."
+        yield Finding(CODE, "error", view.step, outcome.film, outcome.part, at, text, cause)
 
 
 CHECK = Check("expectations", (CODE,), "geometry", run)

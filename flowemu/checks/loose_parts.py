@@ -41,7 +41,8 @@ def run(view: Any) -> Iterator[Finding]:
             if lost is not None and lost.mask is not None and lost.distance > 0:
                 continue
             text = f"part {event.part} ({films}) is adrift after {view.step_title(event.step)}"
-            yield Finding(ADRIFT, "error", event.step, event.films[0], event.part, centre, text, _cause(view, event, lost))
+            cause = _cause(view, event, lost)
+            yield Finding(ADRIFT, "error", event.step, event.films[0], event.part, centre, text, cause)
         else:
             text = f"part {event.part} ({films}) is cut by the window's edge; whether it is held cannot be told"
             cause = "Widen the window, or name the side as a mirror if it is one."
@@ -54,7 +55,8 @@ def _residue(view: Any, slivers: list[Any]) -> Iterator[Finding]:
         mine = [event for event in slivers if event.films[0] == film]
         worst = max(mine, key=lambda event: event.volume)
         pieces = "a sliver" if len(mine) == 1 else f"{len(mine)} slivers"
-        text = f"{pieces} of film {film} came loose in {view.step_title(worst.step)}; the largest is {worst.volume:.2g} um3"
+        where = view.step_title(worst.step)
+        text = f"{pieces} of film {film} came loose in {where}; the largest is {worst.volume:.2g} um3"
         cause = "An earlier etch of the film left them, mostly on walls; a longer overetch there would clear them."
         yield Finding(RESIDUE, "warning", worst.step, film, None, _centre(worst.box), text, cause)
 
@@ -73,7 +75,8 @@ def _play(play: tuple[float | None, ...] | None) -> str:
     if play is None:
         return "not known"
     texts = ["open" if p is None else f"{p:.3g}" for p in play]
-    return ", ".join(f"{axis} -{low} +{high}" for axis, low, high in zip("xyz", texts[::2], texts[1::2], strict=True)) + " um"
+    pairs = zip("xyz", texts[::2], texts[1::2], strict=True)
+    return ", ".join(f"{axis} -{low} +{high}" for axis, low, high in pairs) + " um"
 
 
 CHECK = Check("loose parts", (ADRIFT, CAPTIVE, CUT, RESIDUE), "geometry", run)

@@ -26,12 +26,12 @@ def run(view: Any) -> Iterator[Finding]:
         if event.state != "adrift" or event.sliver:
             continue
         lost = lost_anchor(view, event)
-        if lost is None or lost.mask is None or lost.distance <= 0:
+        if lost is None or lost.mask is None or lost.place is None or lost.distance <= 0:
             continue
         x, y = lost.place
         text = (
-            f"part {event.part} ({lost.film}) is adrift: no opening of mask {lost.mask} (step {lost.printed}) lies under "
-            f"it; the nearest is {lost.distance:.1f} um away, towards ({x:.4g}, {y:.4g}) um."
+            f"part {event.part} ({lost.film}) is adrift: no opening of mask {lost.mask} (step {lost.printed}) lies "
+            f"under it; the nearest is {lost.distance:.1f} um away, towards ({x:.4g}, {y:.4g}) um."
         )
         took = f", which {view.step_title(lost.removed)} took away" if lost.removed is not None else ""
         cause = (

@@ -34,7 +34,8 @@ def run(view: Any) -> Iterator[Finding]:
             continue
         x, y, z = freed.at or (0.0, 0.0, 0.0)
         if isfinite(freed.time):
-            need = f"{_time(freed.time - cut.time)} more are needed ({_time(freed.time)} in all; {_time(cut.time)} are planned)"
+            plan = f"{_time(freed.time)} in all; {_time(cut.time)} are planned"
+            need = f"{_time(freed.time - cut.time)} more are needed ({plan})"
         else:
             need = "the etchant never gets there"
         text = f"{freed.film} is left under part {part} after {view.step_title(cut.step)}: {need}"

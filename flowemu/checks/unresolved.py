@@ -21,7 +21,7 @@ def run(view: Any) -> Iterator[Finding]:
 
     for event in view.events(Unresolved):
         cause = f"A cell of {event.size / 2:.2g} um would tell; nothing is said about these places at this one."
-        yield Finding(CODE, "warning", event.step, event.film, None, event.at, f"{event.text}.", cause, size_um=event.size)
+        yield Finding(CODE, "warning", event.step, event.film, None, event.at, event.text, cause, size_um=event.size)
 
 
 CHECK = Check("unresolved", (CODE,), "geometry", run)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 
@@ -10,6 +11,7 @@ import click
 
 Report = Callable[[int, int, str], None]
 """Called as `report(done, total, text)`: so many of the steps are done, and what comes next."""
+QUIET_S = 1.0  # what is over sooner needs no progress
 
 
 @contextmanager
@@ -19,11 +21,17 @@ def progress() -> Iterator[Report]:
         with _bar() as report:
             yield report
     else:
-        yield _line
+        yield _lines(time.monotonic())
 
 
-def _line(done: int, total: int, text: str) -> None:
-    click.echo(f"{done}/{total} {text}", err=True)
+def _lines(began: float) -> Report:
+    """Plain lines, once the work has taken long enough."""
+
+    def report(done: int, total: int, text: str) -> None:
+        if time.monotonic() - began > QUIET_S:
+            click.echo(f"{done}/{total} {text}", err=True)
+
+    return report
 
 
 @contextmanager

@@ -28,13 +28,13 @@ def command(
     from flowemu.cli._progress import progress
     from flowemu.engine import run_flow
     from flowemu.flow.load import load_flow
-    from flowemu.output import output_folder, write_meshes
+    from flowemu.output import prepare_folder, write_meshes
 
     read = load_flow(flow, allow)
     last = read.find_step(after) if after is not None else None
-    folder = output_folder(out, read.path)
+    folder = prepare_folder(out, read.path)
     with progress() as report:
-        record = run_flow(read, until=last, cell=cell, progress=report).record
-        files = write_meshes(record, formats or FORMATS, folder)
+        run = run_flow(read, until=last, cell=cell, progress=report, checks=False)
+        files = write_meshes(run.record, formats or FORMATS, folder)
     click.echo("\n".join(str(file) for file in files))
     return 0

@@ -30,13 +30,18 @@ def command(
 
     from flowemu.cli._progress import progress
     from flowemu.engine import run_flow
-    from flowemu.engine.probe import probe
+    from flowemu.engine.probe import inside, probe
     from flowemu.flow.load import load_flow
+    from flowemu.stack.grid import Grid
+
+    def ready(grid: Grid) -> None:
+        for at in places:
+            inside(grid, at)
 
     read = load_flow(flow, allow)
     last = read.find_step(after) if after is not None else None
     with progress() as report:
-        run = run_flow(read, until=last, cell=cell, progress=report)
+        run = run_flow(read, until=last, cell=cell, progress=report, checks=False, ready=ready)
     for at in places:
         found = probe(run, at)
         click.echo(json.dumps(found) if as_json else "\n".join(_table(found)))

@@ -25,13 +25,13 @@ def command(
     from flowemu.engine import run_flow
     from flowemu.findings import at_or_above
     from flowemu.flow.load import load_flow
-    from flowemu.output import output_folder, summary_lines, write_run
+    from flowemu.output import prepare_folder, summary, write_run
 
     read = load_flow(flow, allow)
     last = read.find_step(until) if until is not None else None
-    folder = output_folder(out, read.path)
+    folder = prepare_folder(out, read.path)
     with progress() as report:
         record = run_flow(read, until=last, cell=cell, progress=report).record
         notes = write_run(record, folder, progress=report)
-    click.echo("\n".join([*summary_lines(record, fail_on, str(folder)), *notes]))
+    click.echo("\n".join([*summary(record, folder, fail_on), *notes]))
     return 1 if at_or_above(record.findings, fail_on) else 0

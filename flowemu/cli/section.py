@@ -29,13 +29,20 @@ def command(
     from flowemu.cli._progress import progress
     from flowemu.engine import run_flow
     from flowemu.flow.load import load_flow
-    from flowemu.output import output_folder, write_sections
+    from flowemu.output import prepare_folder, write_sections
+    from flowemu.output.cut import clipped
+    from flowemu.stack.grid import Grid
+
+    ends = [line[:2], line[2:]]
+
+    def ready(grid: Grid) -> None:
+        clipped(grid, ends)
 
     read = load_flow(flow, allow)
     steps = sorted({read.find_step(step) for step in after} or {len(read.steps)})
-    folder = output_folder(out, read.path)
+    folder = prepare_folder(out, read.path)
     with progress() as report:
-        record = run_flow(read, until=steps[-1], cell=cell, keep=tuple(steps), progress=report).record
-        files = write_sections(record, (line[:2], line[2:]), steps, folder)
+        run = run_flow(read, until=steps[-1], cell=cell, keep=tuple(steps), progress=report, ready=ready)
+        files = write_sections(run.record, ends, steps, folder)
     click.echo("\n".join(str(file) for file in files))
     return 0

@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Callable
 
-from flowemu.errors import Fault, InputError
+from flowemu.errors import InputError
 from flowemu.flow.flow import Flow
 from flowemu.stack.grid import Grid
 
 SHARE = 0.8  # of the machine's memory that a run may take
 WORK = 14  # fields' worth of working arrays beside the films' own
 FIELDS = 3  # a film's top, floor and gone field
+MOST_CELLS = 2**31 - 1
 
 
 def machine_memory() -> int:
@@ -45,20 +47,34 @@ def needed(cells: int, films: int) -> int:
     return 4 * cells * (FIELDS * films + WORK)
 
 
-def refuse_if_too_large(flow: Flow, grid: Grid) -> None:
-    """Raise an InputError that names the cell which would fit, if the run would not."""
-    have = SHARE * machine_memory()
-    need = needed(grid.cells, most_films(flow))
-    if need <= have and grid.cells < 2**31 - 1:
+def fits(grid: Grid, films: int) -> bool:
+    """Whether a run on this grid fits this machine."""
+    return needed(grid.cells, films) <= SHARE * machine_memory() and grid.cells <= MOST_CELLS
+
+
+def refuse_if_too_large(flow: Flow, grid: Grid, grid_of: Callable[[float], Grid]) -> None:
+    """Raise an InputError that names the cell which would fit, if the run would not.
+
+    `grid_of` makes the flow's grid for another cell, um, or raises an InputError.
+    """
+    films = most_films(flow)
+    if fits(grid, films):
         return
-    factor = max(need / have, grid.cells / (2**31 - 1))
-    fits = float(f"{grid.cell * factor ** (1 / 3) * 1.02:.2g}")
-    if fits < grid.cell * factor ** (1 / 3):
-        fits = float(f"{fits * 1.06:.2g}")
     shape = " x ".join(str(n) for n in reversed(grid.shape))
-    text = (
-        f"grid.cell: {shape} = {grid.cells:,} cells need about {need / 2**30:.3g} GiB and this machine has "
-        f"{machine_memory() / 2**30:.3g} GiB; a cell of {fits:g} um would fit, or a smaller window"
-    )
-    fault = flow.fault(("grid", "cell"), text)
-    raise InputError([Fault(fault.file, fault.line, fault.column, text)])
+    need, have = needed(grid.cells, films) / 2**30, machine_memory() / 2**30
+    cell = fitting_cell(grid, films, grid_of)
+    advice = f"a cell of {cell:g} um would fit, or a smaller window" if cell else "only a smaller window would fit"
+    text = f"{shape} = {grid.cells:,} cells need about {need:,.3g} GiB and this machine has {have:.3g} GiB; {advice}"
+    raise InputError([flow.fault(("grid", "cell"), f"grid.cell: {text}")])
+
+
+def fitting_cell(grid: Grid, films: int, grid_of: Callable[[float], Grid]) -> float | None:
+    """A cell, um, to two digits, on which the run fits; None where the window is smaller than that."""
+    share = needed(grid.cells, films) / (SHARE * machine_memory())
+    cell = float(f"{grid.cell * max(share, grid.cells / MOST_CELLS) ** (1 / 3):.2g}")
+    try:
+        while not fits(grid_of(cell), films):
+            cell = float(f"{cell * 1.06:.2g}")
+    except InputError:
+        return None
+    return cell

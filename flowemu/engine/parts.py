@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from flowemu.engine.view import View
-from flowemu.output.record import PartRow
+from flowemu.record import PartRow
 from flowemu.stack.bodies import Part, box_and_volume, contact_area, find_parts
 from flowemu.stack.loose import judge
 from flowemu.stack.stack import FilmStack

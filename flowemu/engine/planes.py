@@ -56,8 +56,8 @@ def make_grid(flow: Flow, box: tuple[float, float, float, float], cell: float, t
     left, bottom, right, top = box
     nx, ny = _whole(right - left, cell), _whole(top - bottom, cell)
     if min(nx, ny) < 1 or min(right - left, top - bottom) < cell * (1 - 1e-6):
-        text = f"layout.window: the window of {right - left:g} x {top - bottom:g} um is smaller than the grid's cell of {cell:g} um"
-        raise InputError([flow.fault(("layout", "window"), text)])
+        text = f"the window of {right - left:g} x {top - bottom:g} um is smaller than the grid's cell of {cell:g} um"
+        raise InputError([flow.fault(("layout", "window"), f"layout.window: {text}")])
     said = []
     if nx * cell > right - left + 1e-6 or ny * cell > top - bottom + 1e-6:
         said.append(f"the window grew outward to whole cells, {nx * cell:g} x {ny * cell:g} um")
@@ -83,8 +83,8 @@ def _check_planes(flow: Flow, planes: np.ndarray) -> None:
     ratio = np.maximum(gaps[1:] / gaps[:-1], gaps[:-1] / gaps[1:])
     if (ratio > MAX_SPACING_RATIO + 1e-9).any():
         k = int(np.argmax(ratio))
-        text = f"neighbour spacings {gaps[k]:g} um and {gaps[k + 1]:g} um differ by more than a factor {MAX_SPACING_RATIO}"
-        raise InputError([flow.fault(where, f"grid.planes: {text}")])
+        text = f"neighbour spacings {gaps[k]:g} um and {gaps[k + 1]:g} um differ by more than a factor"
+        raise InputError([flow.fault(where, f"grid.planes: {text} {MAX_SPACING_RATIO}")])
 
 
 def dry_run_planes(flow: Flow, cell: float, tools: Any) -> np.ndarray:

@@ -5,6 +5,15 @@ from __future__ import annotations
 from typing import Any
 
 from flowemu.engine.run import Run
+from flowemu.errors import RunError
+from flowemu.stack.grid import Grid
+
+
+def inside(grid: Grid, at: tuple[float, float]) -> None:
+    """Raise a RunError unless a point, um, lies in the window."""
+    x0, y0, x1, y1 = grid.box
+    if not (x0 <= at[0] <= x1 and y0 <= at[1] <= y1):
+        raise RunError(f"({at[0]:g}, {at[1]:g}) um lies outside the window [{x0:g}, {y0:g}, {x1:g}, {y1:g}] um")
 
 
 def probe(run: Run, at: tuple[float, float]) -> dict[str, Any]:
@@ -16,13 +25,9 @@ def probe(run: Run, at: tuple[float, float]) -> dict[str, Any]:
     from flowemu.stack.columns import column
 
     stack = run.wafer.stack
-    x0, y0, x1, y1 = stack.grid.box
-    if not (x0 <= at[0] <= x1 and y0 <= at[1] <= y1):
-        from flowemu.errors import RunError
-
-        raise RunError(f"({at[0]:g}, {at[1]:g}) um lies outside the window [{x0:g}, {y0:g}, {x1:g}, {y1:g}] um")
+    inside(stack.grid, at)
     bottom = -run.flow.wafer.thickness
-    entries = []
+    entries: list[dict[str, Any]] = []
     low = bottom
     for coat in run.wafer.back:
         entries.insert(0, _entry(coat.name, coat.material, low - coat.thickness, low))

@@ -9,8 +9,8 @@ from flowemu.stack.wafer import Cut, Wafer
 WEAK = ("from memory", "unverified")
 
 
-def deciding_rates(flow: Flow, tools: Tools, wafer: Wafer) -> dict[str, tuple[str, ...]]:
-    """`overridden` and `from_memory`: materials and etchants whose rates took something away."""
+def deciding_rates(flow: Flow, tools: Tools, wafer: Wafer) -> tuple[tuple[str, ...], tuple[str, ...]]:
+    """Those overridden in the flow and those from memory: materials and etchants whose rates took something away."""
     overridden: dict[str, None] = {}
     weak: dict[str, None] = {}
     for event in wafer.events:
@@ -28,4 +28,4 @@ def deciding_rates(flow: Flow, tools: Tools, wafer: Wafer) -> dict[str, tuple[st
                 overridden[text] = None
             elif datum.standing.startswith(WEAK):
                 weak[text] = None
-    return {"overridden": tuple(overridden), "from_memory": tuple(weak)}
+    return tuple(overridden), tuple(weak)

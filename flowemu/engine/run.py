@@ -8,7 +8,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any
 
-import flowemu
+from flowemu import __version__
 from flowemu.engine.memory import refuse_if_too_large
 from flowemu.engine.parts import part_rows
 from flowemu.engine.planes import make_grid
@@ -20,7 +20,7 @@ from flowemu.flow.drawn import read_drawn, window_box
 from flowemu.flow.flow import Flow, Step
 from flowemu.flow.process import ProcessDataError, load_process_data
 from flowemu.layout import Layout, MissingCell, read_layout
-from flowemu.output.record import FilmRow, FreeRow, RunRecord, Shot, StepRow
+from flowemu.record import FilmRow, FreeRow, RunRecord, Shot, StepRow
 from flowemu.stack.bodies import Place
 from flowemu.stack.film import Film
 from flowemu.stack.grid import Grid
@@ -33,6 +33,10 @@ Report = Callable[[int, int, str], None]
 
 def _silent(done: int, total: int, text: str) -> None:
     """No report."""
+
+
+def _content(grid: Grid) -> None:
+    """No objection to the grid."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -72,6 +76,7 @@ def run_flow(
     keep: tuple[int, ...] = (),
     progress: Report = _silent,
     checks: bool = True,
+    ready: Callable[[Grid], None] = _content,
 ) -> Run:
     """Run a flow up to a step.
 
@@ -81,6 +86,7 @@ def run_flow(
     cell : um, in place of the flow's own
     keep : steps after which the structure is kept for figures, beside the last one
     checks : whether to look for faults at the end and at every `inspect`
+    ready : called with the grid before the first step; may raise what stops the run
 
     Raises
     ------
@@ -93,7 +99,8 @@ def run_flow(
     box = window_box(flow, layout)
     assert box is not None
     grid, said = make_grid(flow, box, cell if cell is not None else flow.grid.cell, tools)
-    refuse_if_too_large(flow, grid)
+    refuse_if_too_large(flow, grid, lambda other: make_grid(flow, box, other, tools)[0])
+    ready(grid)
     tools = Tools(flow, tools.data, layout, tools.places, grid)
     last = len(flow.steps) if until is None else until
     wafer = Wafer(FilmStack.bare(grid, *_wafer_material(flow, tools)))
@@ -118,9 +125,10 @@ def run_flow(
     view = View(flow, layout, tools, wafer, last, ended=view.ended, parts=parts)
     if checks:
         findings += [f for f in judge_flow(view) if f not in findings]
+    overridden, from_memory = deciding_rates(flow, tools, wafer)
     record = RunRecord(
         flow=flow.title,
-        version=flowemu.__version__,
+        version=__version__,
         revision=hashlib.sha256(flow.path.read_bytes()).hexdigest(),
         masks_sha256=_masks_hash(flow, layout),
         grid=grid,
@@ -130,11 +138,12 @@ def run_flow(
         findings=tuple(findings),
         shots=tuple(shots),
         masks=_mask_loops(flow, layout),
-        frees=_frees(wafer),
+        frees=_frees(flow, wafer),
         expectations=view.expectations() if view.ended else (0, 0),
         run_seconds=time.perf_counter() - began,
         notes=tuple(said),
-        **deciding_rates(flow, tools, wafer),
+        overridden=overridden,
+        from_memory=from_memory,
     )
     return Run(flow, wafer, record)
 
@@ -209,11 +218,15 @@ def _masks_hash(flow: Flow, layout: Layout) -> str:
     return digest.hexdigest()
 
 
-def _frees(wafer: Wafer) -> tuple[FreeRow, ...]:
+def _frees(flow: Flow, wafer: Wafer) -> tuple[FreeRow, ...]:
+    """When each part that is meant to be free comes free in a release."""
+    expected = {entry.subject.part for entry in flow.expect if entry.kind in ("free", "captive")}
     rows = []
     for event in wafer.events:
         if isinstance(event, Cut) and event.verb == "release":
+            wanted = expected | set(flow.steps[event.step - 1].settings.frees or ())
             for freed in event.freed:
-                free = freed.time if freed.time < float("inf") else None
-                rows.append(FreeRow(freed.part, event.step, free, event.time))
+                if freed.part in wanted:
+                    free = freed.time if freed.time < float("inf") else None
+                    rows.append(FreeRow(freed.part, event.step, free, event.time))
     return tuple(rows)

@@ -49,13 +49,13 @@ class Tools:
             raise StepError(str(error)) from None
 
     def material(self, name: str) -> Material:
-        return self._named(self.data.material, name)  # type: ignore[no-any-return]
+        return self._named(self.data.material, name)
 
     def etchant(self, name: str) -> Etchant:
-        return self._named(self.data.etchant, name)  # type: ignore[no-any-return]
+        return self._named(self.data.etchant, name)
 
     def method(self, name: str) -> Method:
-        return self._named(self.data.method, name)  # type: ignore[no-any-return]
+        return self._named(self.data.method, name)
 
     def rate(self, etchant: str, material: str, state: str | None) -> Rate:
         """What is known of a material's rate; see `ProcessData.rate`."""
@@ -81,8 +81,10 @@ class Tools:
         for name in names:
             if name in films:
                 film = films[name]
-                stated = settings.rates.get(name, settings.rates.get(film.material))
-                rates.append(stated if stated is not None else self.rate(settings.etchant, film.material, film.state).value)
+                rate = settings.rates.get(name, settings.rates.get(film.material))
+                if rate is None:
+                    rate = self.rate(settings.etchant, film.material, film.state).value
+                rates.append(rate)
         known = [rate for rate in rates if rate]
         return min(known) if known else 0.0
 
@@ -129,5 +131,6 @@ class Tools:
         if not found or two_d:
             return []
         worst = min(found, key=lambda place: place.width)
-        text = f"mask {settings.mask} has a {worst.kind} of {worst.width:.3g} um, less than two cells of {self.grid.cell:g} um"
+        drawn = f"mask {settings.mask} has a {worst.kind} of {worst.width:.3g} um"
+        text = f"{drawn}, less than two cells of {self.grid.cell:g} um"
         return [Unresolved(self.step, None, text, (worst.x, worst.y, 0.0), worst.width)]

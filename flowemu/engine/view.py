@@ -26,7 +26,7 @@ class View:
     ----------
     step : the last step carried out
     ended : whether that is the flow's last one
-    parts : rows of the parts, see `output.record.PartRow`
+    parts : rows of the parts, see `record.PartRow`
     """
 
     flow: Flow

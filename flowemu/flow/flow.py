@@ -148,5 +148,6 @@ class Flow:
         named = {step.name: step.index for step in self.steps if step.name}
         if reference in named:
             return named[reference]
-        tail = f"; the flow has steps 0 to {len(self.steps)}" if reference.isdecimal() else hint(reference, named)
+        tail = hint(reference, named, "the named ones are") if named and not reference.isdecimal() else ""
+        tail = tail or f"; the flow has steps 0 to {len(self.steps)}"
         raise InputError([Fault(None, None, None, f"there is no step '{reference}'{tail}")])

@@ -15,7 +15,7 @@ def _among(keys, key):
 @njit(cache=True)
 def leaving_points(samples, code, strides, shape, count, start, interval_code, interval_end, piece, pieces, zc, dx, dy):
     """Points on axis edges where the listed pieces end, `(m, 3)` um from the first sample in x and y."""
-    nz, ny, nx = shape
+    _, ny, nx = shape
     n = code.size
     total = 0
     out = np.empty((0, 3), np.float64)
@@ -60,7 +60,9 @@ def _trilinear(field, z, y, x, wz, wy, wx, z1, y1, x1):
 
 
 @njit(cache=True, parallel=True)
-def film_depth(depth, points, top, floor, gone, has_floor, has_gone, film, shared, code, piece, pieces, x0, y0, cell, zc):
+def film_depth(
+    depth, points, top, floor, gone, has_floor, has_gone, film, shared, code, piece, pieces, x0, y0, cell, zc
+):
     """Raise `depth (m,)` at each point to how deep it lies in one film of the rest, um.
 
     Where the film is `shared` with the body itself, a point counts only if a sample of the film beside

@@ -399,7 +399,9 @@ def start_times(
         cell_films(base, corner_offsets, row_of, code, count, start, interval_code, step_of_bits, present)
         if from_void:
             here[:] = 0
-            open_codes(base, corner_offsets, row_of, code, count, start, interval_code, step_of_bits, is_open, piece, here)
+            open_codes(
+                base, corner_offsets, row_of, code, count, start, interval_code, step_of_bits, is_open, piece, here
+            )
         for film in range(films):
             if present[film] == 0 or stage[film] == 0:
                 continue

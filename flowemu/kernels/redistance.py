@@ -64,7 +64,7 @@ def extend_distance(
     Parameters
     ----------
     near : (nz, ny, nx) float32, um
-        Zero or above where known, else +inf. Two samples deep gives a second-order start.
+        Zero or above where known, else +inf; known values stay. Two samples deep gives a second-order start.
     open_space : (nz, ny, nx) bool
         Values elsewhere are not used.
     dx, dy : float, um
@@ -74,9 +74,10 @@ def extend_distance(
     Returns
     -------
     (nz, ny, nx) float32, um
-        No higher than `near`; +inf above the limit, where not open and where not reached.
+        `near` where that is known; +inf above the limit, where not open and where not reached.
     """
-    return arrival_on_grid(np.where(open_space, near, np.float32(np.nan)), 1.0, dx, dy, z_centres, limit)
+    slowness = np.where(np.isfinite(near) | ~open_space, np.float32(np.inf), np.float32(1))
+    return arrival_on_grid(np.where(open_space, near, np.float32(np.nan)), slowness, dx, dy, z_centres, limit)
 
 
 def _crossed_planes(field: np.ndarray) -> np.ndarray:

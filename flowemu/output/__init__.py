@@ -6,7 +6,6 @@ from importlib import import_module
 from typing import Any
 
 _PUBLIC = {
-    "RunRecord": "record",
     "prepare_folder": "folder",
     "section_polygons": "section",
     "summary": "end_of_run",

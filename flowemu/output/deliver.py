@@ -12,12 +12,12 @@ from flowemu.output.folder import staged
 from flowemu.output.mesh import FORMATS as MESH_FORMATS
 from flowemu.output.mesh import write_mesh_files
 from flowemu.output.opengl import missing_opengl
-from flowemu.output.record import Line, RunRecord, Shot
 from flowemu.output.result import result_text
 from flowemu.output.scene import draw_scene, view_of
 from flowemu.output.section import section_polygons
 from flowemu.output.solid import FilmSolid, film_solids
 from flowemu.output.theme import looks_of
+from flowemu.record import Line, RunRecord, Shot
 from flowemu.stack.grid import Grid
 
 Report = Callable[[int, int, str], None]

@@ -7,7 +7,7 @@ from math import isfinite
 from pathlib import Path
 
 from flowemu.findings import SEVERITIES, Finding, at_or_above, worst_first
-from flowemu.output.record import FreeRow, PartRow, RunRecord
+from flowemu.record import FreeRow, PartRow, RunRecord
 
 LABEL = 9
 MOST_ERRORS = 6
@@ -86,9 +86,9 @@ def finding_lines(findings: Sequence[Finding]) -> list[str]:
 
 def finding_line(finding: Finding) -> str:
     """Code, step, place, text and cause of one finding."""
-    place = f" at ({', '.join(f'{v:g}' for v in finding.at_um)}) um" if finding.at_um else ""
+    place = f" at ({', '.join(f'{v:.4g}' for v in finding.at_um)}) um" if finding.at_um else ""
     step = f", step {finding.step}" if finding.step is not None else ""
-    said = " ".join(sentence.rstrip() for sentence in (finding.text, finding.cause) if sentence)
+    said = " ".join(sentence.rstrip(" .") + "." for sentence in (finding.text, finding.cause) if sentence)
     return labelled(finding.severity, f"{finding.code}{step}{place}: {said}")
 
 
@@ -107,12 +107,12 @@ def play_text(part: PartRow) -> str:
     if part.play_um is None:
         return ""
     pairs = zip("xyz", part.play_um[::2], part.play_um[1::2], strict=True)
-    return " (play " + ", ".join(f"{axis} {reach(low)} {reach(high)}" for axis, low, high in pairs) + " um)"
+    return " (play " + ", ".join(f"{axis} {reach('-', low)} {reach('+', high)}" for axis, low, high in pairs) + " um)"
 
 
-def reach(play: float) -> str:
+def reach(sign: str, play: float) -> str:
     """How far a part can move one way, um; `open` where nothing stops it."""
-    return f"{play + 0.0:+.3g}" if isfinite(play) else "open"
+    return f"{sign}{play:.3g}" if isfinite(play) else "open"
 
 
 def few(names: Sequence[str]) -> str:

@@ -7,7 +7,7 @@ import math
 from typing import Any
 
 from flowemu.findings import Finding
-from flowemu.output.record import RunRecord
+from flowemu.record import RunRecord
 
 DIGITS = 7
 

@@ -61,11 +61,11 @@ def piece_at(stack: FilmStack, film: str | None, x: float, y: float) -> tuple[in
     _, ny, nx = t.code.shape
     ix = min(max(int((x - grid.x0) / grid.cell), 0), grid.nx - 1)
     iy = min(max(int((y - grid.y0) / grid.cell), 0), grid.ny - 1)
-    wanted = [k for k, f in enumerate(stack.films) if film is None and k > 0 and f.name != "resist" or f.name == film]
+    wanted = [k for k, f in enumerate(stack.films) if (film is None and k > 0 and f.name != "resist") or f.name == film]
     column = t.code[:, iy, ix]
     inside = np.flatnonzero(np.isin(column, wanted))
     if len(inside):
-        z = int(inside[-1]) if film is None else int(inside[-1])
+        z = int(inside[-1])
         node = (z * ny + iy) * nx + ix
         return int(column[z]), int(t.piece[node]), int(t.body[node])
     inner = t.inner
@@ -199,9 +199,8 @@ def contact_area(stack: FilmStack, parts: Iterable[int], others: Iterable[int] |
     from flowemu.kernels import beam
 
     t, grid = stack.topology, stack.grid
-    return float(
-        beam.touching_area(
-            t.samples, t.code.reshape(-1), t.strides, t.code.shape, t.count, t.start, t.interval_code, t.piece,
-            np.array(sorted(parts), np.int64), grid.z, grid.cell, min(grid.nx, grid.ny) == 1,
-        )  # fmt: skip
-    )
+    area = beam.touching_area(
+        t.samples, t.code.reshape(-1), t.strides, t.code.shape, t.count, t.start, t.interval_code, t.piece,
+        np.array(sorted(parts), np.int64), grid.z, grid.cell, min(grid.nx, grid.ny) == 1,
+    )  # fmt: skip
+    return float(area)

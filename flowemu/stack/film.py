@@ -6,6 +6,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+BAND = 6.0
+"""Cells to either side of a surface within which its field is a distance."""
+
 
 @dataclass(frozen=True, eq=False)
 class Film:

@@ -6,7 +6,8 @@ import numpy as np
 
 from flowemu.kernels import fronts
 from flowemu.kernels.redistance import redistance
-from flowemu.stack.stack import BAND, FilmStack
+from flowemu.stack.film import BAND
+from flowemu.stack.stack import FilmStack
 from flowemu.stack.topology import Topology
 
 RINGS = int(BAND) + 1

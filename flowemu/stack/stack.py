@@ -9,13 +9,26 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from flowemu.stack.film import Film
+from flowemu.stack.film import BAND, Film
 from flowemu.stack.grid import Grid
+from flowemu.stack.invariants import watch
 
 if TYPE_CHECKING:
     from flowemu.stack.topology import Topology
 
-BAND = 4.0  # cells to either side of a surface within which its field is a distance
+
+SKIN = 0.25  # of a cell: what a shallow etch takes off a film's top is a change of that top, not a cut
+
+
+def skims(film: Film, removed: np.ndarray, cell: float) -> bool:
+    """Whether a removed field takes no more than a skin off the film's top, and not half of its thickness."""
+    near = np.abs(film.top) < 1.5 * cell
+    if film.floor is not None:
+        near &= film.floor > film.top
+    depth = removed[near] - film.top[near]
+    if film.floor is None:
+        return bool((depth < SKIN * cell).all())
+    return bool((depth < np.minimum(SKIN * cell, 0.5 * (film.floor[near] - film.top[near]))).all())
 
 
 @dataclass(frozen=True, eq=False)
@@ -62,23 +75,26 @@ class FilmStack:
     def add(self, film: Film) -> FilmStack:
         """Append a film, given with the `top` field of the solid it makes with what is below it."""
         laid = replace(film, floor=self.surface)
-        return FilmStack(self.grid, (*self.films, laid), film.top)
+        return watch(self, FilmStack(self.grid, (*self.films, laid), film.top), "add")
 
     def carve(self, removed: Mapping[int, np.ndarray]) -> FilmStack:
         """Take away from each named film what lies where its removed field is positive.
 
-        A field raises the film's `gone` field; films left with nothing are dropped. Where nothing is
-        taken the very same stack comes back.
+        A field raises the film's `gone` field, or its `top` where it only skims that; films left with
+        nothing are dropped. Where nothing is taken the very same stack comes back.
         """
         films = list(self.films)
         changed = False
         for k, field in removed.items():
-            gone = films[k].gone
+            film = films[k]
             if not bool(np.any(field > 0)):
                 continue
-            films[k] = replace(films[k], gone=field if gone is None else np.maximum(gone, field))
+            if skims(film, field, self.grid.cell):
+                films[k] = replace(film, top=np.maximum(film.top, field))
+            else:
+                films[k] = replace(film, gone=field if film.gone is None else np.maximum(film.gone, field))
             changed = True
-        return self._recut(films) if changed else self
+        return watch(self, self._recut(films), "carve", set(removed)) if changed else self
 
     def without(self, numbers: set[int]) -> FilmStack:
         """The stack with whole films taken away."""

@@ -8,11 +8,10 @@ import numpy as np
 
 from flowemu.kernels import surface as kernel
 from flowemu.kernels.redistance import redistance
-from flowemu.stack.film import Film
+from flowemu.stack.film import BAND, Film
 from flowemu.stack.grid import Grid
 from flowemu.stack.topology import Topology
 
-BAND = 4.0
 SAME = 1e-3  # of a cell: a smaller change of the surface is rounding, and the old value stays
 
 

@@ -15,7 +15,8 @@ def open_gaps(stack: FilmStack, step: int, film: str) -> Iterator[Unresolved]:
     t, grid = stack.topology, stack.grid
     inner = t.inner
     axis = inner.direction < 3
-    thin = axis & (inner.code < 0) & np.isin(t.piece[inner.node], t.open_roots)
+    between = (inner.code < 0) & (inner.below >= 0) & (inner.above >= 0)
+    thin = axis & between & np.isin(t.piece[inner.node], t.open_roots)
     if not thin.any():
         return
     _, ny, nx = t.code.shape

@@ -189,7 +189,10 @@ class Topology:
 
 @dataclass(frozen=True, eq=False)
 class InnerIntervals:
-    """Pieces of film or void thinner than the samples' spacing along some edge."""
+    """Pieces of film or void thinner than the samples' spacing along some edge.
+
+    `below` and `above` are the codes on either side along the edge.
+    """
 
     node: np.ndarray
     row: np.ndarray
@@ -197,6 +200,8 @@ class InnerIntervals:
     code: np.ndarray
     low: np.ndarray
     high: np.ndarray
+    below: np.ndarray
+    above: np.ndarray
 
     @classmethod
     def of(cls, topology: Topology) -> InnerIntervals:
@@ -212,4 +217,6 @@ class InnerIntervals:
             code=topology.interval_code[at],
             low=topology.interval_end[at - 1],
             high=topology.interval_end[at],
+            below=topology.interval_code[at - 1],
+            above=topology.interval_code[at + 1],
         )

@@ -26,7 +26,6 @@ from __future__ import annotations
 
 from typing import Any
 
-import numpy as np
 from pydantic import Field
 
 from flowemu.errors import StepError
@@ -55,6 +54,8 @@ class DepositSettings(StepSettings):
 
 def apply(state: Any, settings: DepositSettings, tools: Any) -> Any:
     """The step on the structure."""
+    import numpy as np
+
     from flowemu.stack.film import Film
     from flowemu.stack.thin import open_gaps
     from flowemu.steps.models.coating import coat, spin, surface_heights
@@ -85,9 +86,8 @@ def _coverage(settings: DepositSettings, material: Any, method: Any, tools: Any,
         return 1.0
     typical = material.typical_coverage or method.typical_coverage
     hint = f", such as coverage: {typical.value}" if typical else ""
-    raise StepError(
-        f"{material.name} by {method.name} thins on walls and the surface is not flat; state its coverage of walls{hint}"
-    )
+    thins = f"{material.name} by {method.name} thins on walls and the surface is not flat"
+    raise StepError(f"{thins}; state its coverage of walls{hint}")
 
 
 def heights(profile: Any, settings: DepositSettings, tools: Any) -> Any:

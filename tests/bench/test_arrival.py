@@ -77,7 +77,7 @@ def compare(name: str, exact: np.ndarray, blocked: np.ndarray) -> float:
         lambda: ndimage.distance_transform_edt(outside),
     )
     print(
-        f"\n{name} {exact.shape}: {a:.3f} s, scikit-fmm {b:.3f} s, ratio {b / a:.2f}, E {unit:.3f} s, {a / unit:.2f} E; "
+        f"\n{name} {exact.shape}: {a:.3f} s, scikit-fmm {b:.3f} s, ratio {b / a:.2f}, E {unit:.3f} s; "
         f"error {error.mean():.3f}, {error.max():.3f} against {other.mean():.3f}, {other.max():.3f} cell"
     )
     assert error.mean() <= other.mean()

@@ -12,7 +12,7 @@ import pytest
 PACKAGE = Path(__file__).parents[2] / "flowemu"
 BASE = {"errors", "units"}
 KINDS = BASE | {"registry", "findings", "flow", "layout", "stack", "kernels"}
-ENGINE = KINDS | {"steps", "checks"}
+ENGINE = KINDS | {"steps", "checks", "record"}
 EVERYTHING = ENGINE | {"engine", "output", "live", "__version__"}
 # Row: what it may import of flowemu, and the third parties for this row (numpy is free to all).
 TABLE: dict[str, tuple[set[str], set[str]]] = {
@@ -20,6 +20,7 @@ TABLE: dict[str, tuple[set[str], set[str]]] = {
     "units": ({"errors"}, set()),
     "findings": ({"errors"}, set()),
     "registry": (BASE | {"findings"}, set()),
+    "record": ({"findings", "stack"}, set()),
     "__init__": (set(), set()),
     "__main__": ({"cli"}, set()),
     "kernels": (set(), {"numba"}),
@@ -30,7 +31,7 @@ TABLE: dict[str, tuple[set[str], set[str]]] = {
     "checks": (KINDS, {"scipy"}),
     "engine": (ENGINE | {"__version__"}, {"scipy", "dask", "zarr"}),
     "output": (
-        BASE | {"findings", "flow", "stack", "checks", "__version__"},
+        BASE | {"findings", "record", "flow", "stack", "checks", "__version__"},
         {"pyvista", "trimesh", "matplotlib", "jinja2", "contourpy", "shapely", "manifold3d", "vtk", "vtkmodules"},
     ),
     "live": (EVERYTHING - {"live"}, set()),

@@ -12,10 +12,10 @@ import pytest
 from flowemu.errors import RunError
 from flowemu.output import opengl
 from flowemu.output.deliver import middle_cuts, write_meshes, write_run, write_sections
-from flowemu.output.record import RunRecord, Shot
 from flowemu.output.scene import cut_away, draw_scene, view_of
 from flowemu.output.solid import film_solids
 from flowemu.output.theme import looks_of
+from flowemu.record import RunRecord, Shot
 
 needs_opengl = pytest.mark.skipif(opengl.missing_opengl() is not None, reason=str(opengl.missing_opengl()))
 

@@ -9,6 +9,7 @@ import contextlib
 import io
 import os
 import random
+import re
 import shlex
 import shutil
 import tempfile
@@ -18,6 +19,8 @@ from pathlib import Path
 
 FOLDER = Path(__file__).parent
 COMMAND = "lint flow.yaml"
+PROGRESS = re.compile(r"^\d+/\d+ .*\n", re.MULTILINE)
+MEMORY = 8 * 2**30  # bytes: a machine of known size, for what is said of grids that are too large
 
 
 def case_names() -> list[str]:
@@ -25,28 +28,29 @@ def case_names() -> list[str]:
     return sorted(flow.parent.name for flow in FOLDER.glob("*/flow.yaml"))
 
 
-def outcome(name: str, folder: Path) -> str:
-    """The exit status and all that the case's command prints, run in `folder`.
+def command_of(name: str) -> str:
+    """What a case runs: `lint flow.yaml` unless it has a file command.txt."""
+    file = FOLDER / name / "command.txt"
+    return file.read_text().strip() if file.exists() else COMMAND
 
-    The command is `lint flow.yaml` unless the case has a file command.txt.
-    """
+
+def outcome(name: str, folder: Path, command: str | None = None) -> str:
+    """The exit status and all that a case's command, or another one, prints in `folder`, progress left out."""
     from flowemu.cli import main
 
-    case = FOLDER / name
-    shutil.copy(case / "flow.yaml", folder)
+    shutil.copy(FOLDER / name / "flow.yaml", folder)
     draw_layouts(folder)
     before = listing(folder)
-    command = (case / "command.txt").read_text() if (case / "command.txt").exists() else COMMAND
     printed = io.StringIO()
     with contextlib.chdir(folder), contextlib.redirect_stdout(printed), contextlib.redirect_stderr(printed):
-        status = main(shlex.split(command))
+        status = main(shlex.split(command or command_of(name)))
     left = "" if listing(folder) == before else "the folder was changed\n"
-    return f"status {status}\n{left}{printed.getvalue()}"
+    return f"status {status}\n{left}{PROGRESS.sub('', printed.getvalue())}"
 
 
-def listing(folder: Path) -> list[tuple[str, int]]:
-    """Every file in a folder with its size."""
-    return sorted((str(p.relative_to(folder)), p.stat().st_size) for p in folder.rglob("*") if p.is_file())
+def listing(folder: Path) -> list[tuple[str, bytes | None]]:
+    """Every file in a folder with its content, and every folder in it."""
+    return sorted((str(p.relative_to(folder)), p.read_bytes() if p.is_file() else None) for p in folder.rglob("*"))
 
 
 def draw_layouts(folder: Path) -> None:
@@ -77,7 +81,10 @@ def case_folder() -> Iterator[Path]:
 
 def regenerate() -> None:
     """Writes every expected.txt."""
+    from flowemu.engine import memory
+
     os.environ.pop("FLOWEMU_DEBUG", None)
+    memory.machine_memory = lambda: MEMORY
     for name in case_names():
         with case_folder() as folder:
             (FOLDER / name / "expected.txt").write_text(outcome(name, folder))

@@ -10,7 +10,7 @@ from flowemu.stack.film import Film
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.surfaces import distance_in_void
 
-EXACT = 2.0  # cells above the surface whose distance is taken as it stands; beyond it is marched
+EXACT = 5.5  # cells above the surface whose distance is taken as it stands; beyond it is marched
 
 
 def coat(stack: FilmStack, film: Film, thickness: float, coverage: float = 1.0) -> FilmStack:
@@ -22,17 +22,15 @@ def coat(stack: FilmStack, film: Film, thickness: float, coverage: float = 1.0) 
     grid, surface = stack.grid, stack.surface
     open_space = np.ascontiguousarray(stack.topology.on_grid(stack.topology.open_space))
     width = kernel.extent(surface, grid.z, grid.cell, grid.cell, coverage)
-    away = np.maximum(surface, 0)
-    if coverage < 1.0:
-        code = np.ascontiguousarray(stack.topology.on_grid(stack.topology.code))
-        away = distance_in_void(grid, stack.films, code, stack.band, coverage)
-    near = np.where(open_space & (surface < EXACT * grid.cell), away, np.float32(np.inf))
+    code = np.ascontiguousarray(stack.topology.on_grid(stack.topology.code))
+    away = distance_in_void(grid, stack.films, code, stack.band, coverage)
+    near = np.where(open_space & (away < EXACT * grid.cell), away, np.float32(np.inf))
     across = grid.cell / coverage
     limit = thickness + stack.band / coverage
     far = extend_distance(near.astype(np.float32), open_space, across, across, grid.z, limit)
     top = np.where(open_space, np.minimum(far, limit), surface / width) - np.float32(thickness)
     if coverage < 1.0:
-        top = kernel.normalise(top.astype(np.float32), grid.z, grid.cell, grid.cell)
+        top = kernel.normalise(top.astype(np.float32), open_space, grid.z, grid.cell, grid.cell)
         top = redistance(top, grid.cell, grid.cell, grid.z, stack.band)
     sealed = ~open_space & (surface > 0)
     top = np.where(sealed, np.maximum(surface, top), top)
@@ -56,7 +54,7 @@ def spin(stack: FilmStack, film: Film, thickness: float, planarisation: float = 
     top = (z - top_height[None]).astype(np.float32)
     if planarisation < 1:
         top = redistance(
-            kernel.normalise(top, grid.z, grid.cell, grid.cell), grid.cell, grid.cell, grid.z, stack.band
+            kernel.normalise(top, np.ones(top.shape, bool), grid.z, grid.cell, grid.cell), grid.cell, grid.cell, grid.z, stack.band
         )
     open_space = stack.topology.on_grid(stack.topology.open_space)
     sealed = ~open_space & (stack.surface > 0)

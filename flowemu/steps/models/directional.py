@@ -66,7 +66,8 @@ class Beam:
 
     def expose_time(self, film: int) -> float:
         """When the film shows over 90 % of the area that no mask covers, s; inf if it never does."""
-        above = [k for k in range(len(self.stack.films)) if k != film and self.rates.get(k, 0) > 0 and k not in self.masks]
+        etched = [k for k in range(len(self.stack.films)) if self.rates.get(k, 0) > 0 and k not in self.masks]
+        above = [k for k in etched if k != film]
         top, _, _ = self.through(film, above)
         first = self._on_grid(beam.strike(*self._edges(), self.slowness, 0.0)[3])
         open_area = (first >= 0) & ~np.isin(first, list(self.masks))

@@ -23,7 +23,7 @@ def polish_to(wafer: Wafer, depth: float | None, to: str | None, tools: Any) -> 
     else:
         level = float(surface_heights(stack).max()) - float(depth or 0.0)
     above = np.ascontiguousarray(np.broadcast_to((grid.z - level).astype(np.float32)[:, None, None], grid.shape))
-    after = stack.carve({k: above for k in range(len(stack.films))})
+    after = stack.carve(dict.fromkeys(range(len(stack.films)), above))
     losses = []
     for film in stack.films:
         new = next((f for f in after.films if f.name == film.name and f.step == film.step), None)

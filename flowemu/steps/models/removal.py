@@ -177,7 +177,8 @@ def _flat_rate(etch: Etch) -> float:
     if etch.rates[k] <= 0:
         film = etch.stack.films[k]
         why = etch.unknown.get(k, "its rate is 0")
-        raise StepError(f"depth: film '{film.name}' ({film.material}), which covers the open area, is not etched by '{etch.settings.etchant}': {why}")
+        covers = f"film '{film.name}' ({film.material}), which covers the open area"
+        raise StepError(f"depth: {covers}, is not etched by '{etch.settings.etchant}': {why}")
     return etch.rates[k]
 
 
@@ -211,8 +212,9 @@ def _refuse_unknown(etch: Etch, after: FilmStack) -> None:
             )
             if bare.any():
                 state = f", {film.state}" if film.state else ""
+                agent = etch.settings.etchant
                 raise StepError(
-                    f"no rate for film '{film.name}' ({film.material}{state}) in '{etch.settings.etchant}', which meets it: "
+                    f"no rate for film '{film.name}' ({film.material}{state}) in '{agent}', which meets it: "
                     f"{why}; give one under rates, such as rates: {{{film.name}: 5 nm/min}}"
                 )
 
@@ -235,7 +237,7 @@ def _losses(etch: Etch, after: FilmStack, time: float, first_times: dict[int, fl
         new_map = thickness_map(after, here[0]) if here else np.zeros_like(old_map)
         usual = float(np.median(old_map[old_map > 0])) if (old_map > 0).any() else 0.0
         lost = old_map - new_map
-        iy, ix = np.unravel_index(int(np.argmax(lost)), lost.shape)
+        iy, ix = (int(i) for i in np.unravel_index(int(np.argmax(lost)), lost.shape))
         through = bool(((old_map > 0.5 * usual) & (new_map <= 1e-6)).sum() > 2)
         meant = film.name in named or film.name == "resist" or (not named and etch.rates[k] >= MEANT_SHARE * fastest)
         top = _top_at(before, k, iy, ix)

@@ -10,8 +10,8 @@ import pytest
 
 from flowemu.findings import Finding
 from flowemu.output.end_of_run import summary
-from flowemu.output.record import FilmRow, FreeRow, PartRow, RunRecord, StepRow, WindowRow
 from flowemu.output.result import result_text
+from flowemu.record import FilmRow, FreeRow, PartRow, RunRecord, StepRow, WindowRow
 from flowemu.stack.grid import Grid
 
 OUT = Path("outputs/comb")
@@ -33,7 +33,7 @@ def record(**changes) -> RunRecord:
         "films": (FilmRow("wafer", "silicon", 0, np.float32(400.0)),),
         "parts": (
             PartRow("pin", ("poly2",), 20.0, (-1, -1, 0, 1, 1, 4), "held", 6.25),
-            PartRow("comb", ("poly1",), 50.0, None, "captive", None, (-0.6, 0.6, -0.6, 0.6, 0.0, np.inf)),
+            PartRow("comb", ("poly1",), 50.0, None, "captive", None, (0.6, 0.6, 0.6, 0.6, 0.0, np.inf)),
         ),
         "findings": (NOTE, ERROR),
         "masks": {"ANCHOR": [], "PLATE": []},
@@ -63,7 +63,7 @@ def test_what_does_not_apply_is_null_and_what_is_endless_too() -> None:
     assert result["windows"] == []
     assert result["steps"][0]["name"] is None
     assert result["parts"][0]["play_um"] is None
-    assert result["parts"][1]["play_um"] == [-0.6, 0.6, -0.6, 0.6, 0.0, None]
+    assert result["parts"][1]["play_um"] == [0.6, 0.6, 0.6, 0.6, 0.0, None]
     assert result["findings"][0]["at_um"] is None
 
 
@@ -74,7 +74,7 @@ def test_end_of_a_run_word_for_word() -> None:
         "window   10 x 10 um, cell 0.5 um, 20 x 20 x 16 = 6,400 cells",
         "verdict  NOT READY: 1 error, 0 warnings, 1 note, 0 waived; 2 steps in 12 s",
         "error    missing-anchor, step 7 at (12, 0.5, 3) um: comb is adrift. It rested on glass1.",
-        "parts    held: pin; captive: comb (play x -0.6 +0.6, y -0.6 +0.6, z +0 open um)",
+        "parts    held: pin; captive: comb (play x -0.6 +0.6, y -0.6 +0.6, z -0 open um)",
         "release  comb comes free after 9 min of the planned 15 min",
         "masks    ANCHOR, PLATE",
         "expected 2 of 3 hold",

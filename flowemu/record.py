@@ -42,7 +42,8 @@ class FilmRow:
 
 @dataclass(frozen=True)
 class PartRow:
-    """One part; `state` is held, captive, adrift, gone or cut by the window; play is -x, +x, -y, +y, -z, +z."""
+    """One part; `state` is held, captive, adrift, gone or cut by the window; play is how
+    far it can move in -x, +x, -y, +y, -z, +z, infinity where nothing stops it."""
 
     name: str
     films: tuple[str, ...]
