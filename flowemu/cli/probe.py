@@ -45,6 +45,9 @@ def command(
     for at in places:
         found = probe(run, at)
         click.echo(json.dumps(found) if as_json else "\n".join(_table(found)))
+    if run.wafer.back and not as_json:
+        coats = ", ".join(f"{coat.name} {coat.thickness:g} um" for coat in run.wafer.back)
+        click.echo(f"on the wafer's back, from the wafer outward: {coats}")
     return 0
 
 

@@ -20,7 +20,7 @@ def probe(run: Run, at: tuple[float, float]) -> dict[str, Any]:
     """Films under `at`, um, lowest first; heights from the wafer's front face.
 
     The wafer's own entry begins at minus its thickness; a gap between two entries is a void. Films on
-    the back that the grid does not reach come first.
+    the back, which the grid does not reach, are `run.wafer.back`.
     """
     from flowemu.stack.columns import column
 
@@ -28,10 +28,6 @@ def probe(run: Run, at: tuple[float, float]) -> dict[str, Any]:
     inside(stack.grid, at)
     bottom = -run.flow.wafer.thickness
     entries: list[dict[str, Any]] = []
-    low = bottom
-    for coat in run.wafer.back:
-        entries.insert(0, _entry(coat.name, coat.material, low - coat.thickness, low))
-        low -= coat.thickness
     for layer in column(stack, *at):
         film = stack.films[layer.film]
         start = bottom if layer.film == 0 and not any(e["film"] == "wafer" for e in entries) else layer.low

@@ -179,16 +179,45 @@ def shadow(top, floor, gone, has_floor, zc, row_of, count, start, interval_code,
 
 
 @njit(cache=True)
-def beside_in_column(samples, code, count, start, interval_code, stride, film):
-    """Mark the samples that are not in `film` but have it on an edge of their column, `(n,)` bool."""
+def beside_film(samples, code, count, start, interval_code, strides, film, first, last):
+    """Mark the samples that are not in `film` but have it on an edge of directions first..last-1, `(n,)` bool."""
     out = np.zeros(code.size, np.bool_)
     for s in range(samples.size):
-        at = start[s * 7 + 2]
-        for q in range(count[s, 2]):
-            if interval_code[at + q] == film:
-                for i in (samples[s], samples[s] + stride):
-                    if code[i] != film:
-                        out[i] = True
+        for d in range(first, last):
+            at = start[s * 7 + d]
+            for q in range(np.int64(count[s, d])):
+                if interval_code[at + q] == film:
+                    for i in (samples[s], samples[s] + strides[d]):
+                        if code[i] != film:
+                            out[i] = True
+    return out
+
+
+@njit(cache=True, parallel=True)
+def moved_down(top, depth, zc):
+    """A film's top field moved down by `depth (ny, nx)` um, seen from above, `(nz, ny, nx)` float32.
+
+    Seen from above: under an overhang the field of the overhang counts.
+    """
+    nz, ny, nx = top.shape
+    out = np.empty((nz, ny, nx), np.float32)
+    for y in prange(ny):
+        for x in range(nx):
+            seen = np.empty(nz, np.float64)
+            least = np.inf
+            for z in range(nz - 1, -1, -1):
+                least = min(least, top[z, y, x])
+                seen[z] = least
+            for z in range(nz):
+                at = zc[z] + depth[y, x]
+                k = min(np.searchsorted(zc, at), nz - 1)
+                if at >= zc[nz - 1]:
+                    out[z, y, x] = seen[nz - 1] + (at - zc[nz - 1])
+                elif k == 0 or depth[y, x] == 0:
+                    out[z, y, x] = seen[z]
+                else:
+                    s = (at - zc[k - 1]) / (zc[k] - zc[k - 1])
+                    out[z, y, x] = seen[k - 1] + s * (seen[k] - seen[k - 1])
     return out
 
 

@@ -53,7 +53,9 @@ def grid_line(record: RunRecord) -> str:
     grid = record.grid
     x0, y0, x1, y1 = grid.box
     size = " x ".join(str(n) for n in reversed(grid.shape))
-    return labelled("window", f"{x1 - x0:g} x {y1 - y0:g} um, cell {grid.cell:g} um, {size} = {grid.cells:,} cells")
+    said = "".join(f"; {note}" for note in record.notes)
+    text = f"{x1 - x0:g} x {y1 - y0:g} um, cell {grid.cell:g} um, {size} = {grid.cells:,} cells"
+    return labelled("window", text + said)
 
 
 def verdict_line(record: RunRecord, fail_on: str) -> str:

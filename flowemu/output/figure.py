@@ -13,7 +13,7 @@ from flowemu.output import theme
 from flowemu.output.frame import Frame, frame_of, rings_of
 from flowemu.output.labels import label_films
 from flowemu.output.marks import findings_near, mark_findings, scale_bars
-from flowemu.output.panels import LINE_IN, ROW_IN, draw_findings, draw_legend, draw_masks, name_masks
+from flowemu.output.panels import LINE_IN, ROW_IN, draw_findings, draw_legend, draw_masks, findings_in_words, name_masks
 from flowemu.output.section import Section
 from flowemu.output.theme import Look, looks_of
 
@@ -78,8 +78,9 @@ def draw_section(
 
     frame = frame_of(section, stretch)
     near = findings_near(section, findings)
-    height = max(frame.height_in + ABOVE_IN + foot_height(len(near)), panel_height(section, masks))
     width = LEFT_IN + max(frame.width_in, 4.0) + GAP_IN + PANEL_IN + RIGHT_IN
+    told = findings_in_words(near, width - LEFT_IN - RIGHT_IN)
+    height = max(frame.height_in + ABOVE_IN + foot_height(len(told)), panel_height(section, masks))
     with matplotlib.rc_context(STYLE):
         figure = Figure(figsize=(width, height), dpi=DPI, facecolor=theme.PAPER)
         below = height - ABOVE_IN - frame.height_in
@@ -92,13 +93,13 @@ def draw_section(
         headings(figure, axes, section, frame, title, subtitle)
         left = LEFT_IN + max(frame.width_in, 4.0) + GAP_IN
         draw_panel(figure, left, (width, height), section, looks, masks, window)
-        draw_findings(figure, near, LEFT_IN / width, (below - BELOW_IN) / height, height)
+        draw_findings(figure, told, LEFT_IN / width, (below - BELOW_IN) / height, height)
     return figure
 
 
-def foot_height(findings: int) -> float:
-    """Room for the axis, the scales and the listed findings, inches."""
-    return BELOW_IN + (LINE_IN * findings + 0.12 if findings else 0.0)
+def foot_height(lines: int) -> float:
+    """Room for the axis, the scales and the lines that tell of findings, inches."""
+    return BELOW_IN + (LINE_IN * lines + 0.12 if lines else 0.0)
 
 
 def panel_height(section: Section, masks: Mapping[str, Sequence[np.ndarray]] | None) -> float:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from textwrap import wrap
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -23,7 +24,8 @@ ROW_IN = 0.2
 SWATCH_IN = 0.3
 LINE_IN = 0.17
 LETTER_IN = 0.075
-MOST_LETTERS = 150
+LETTERS_PER_IN = 17.0  # of the findings in words
+MOST_LINES = 3
 
 
 def draw_masks(
@@ -109,14 +111,19 @@ def legend_text(film: Film) -> str:
     return film.name if film.name == material else f"{film.name}: {material}"
 
 
-def draw_findings(
-    figure: Figure, near: Sequence[tuple[Finding, float, float]], left: float, top: float, height_in: float
-) -> None:
-    """The marked findings in words, one line each, below the section."""
+def findings_in_words(near: Sequence[tuple[Finding, float, float]], width_in: float) -> list[tuple[str, str]]:
+    """Colour and text of every line that tells of the marked findings, none wider than `width_in`."""
+    lines = []
+    letters = int(LETTERS_PER_IN * width_in)
     for i, (finding, _, _) in enumerate(near):
-        text = f"{finding.severity} {finding.code}: {finding.text}"
-        text = text if len(text) <= MOST_LETTERS else text[: MOST_LETTERS - 1] + "…"
-        at = top - (i * LINE_IN + 0.02) / height_in
-        figure.text(
-            left, at, f"{i + 1}  {text}", fontsize=7.5, va="top", color=theme.SEVERITY.get(finding.severity, theme.INK)
-        )
+        text = f"{i + 1}  {finding.severity} {finding.code}: {finding.text}"
+        colour = theme.SEVERITY.get(finding.severity, theme.INK)
+        told = wrap(text, letters, subsequent_indent="    ", max_lines=MOST_LINES, placeholder=" …")
+        lines += [(colour, line) for line in told]
+    return lines
+
+
+def draw_findings(figure: Figure, lines: Sequence[tuple[str, str]], left: float, top: float, height_in: float) -> None:
+    """The marked findings in words below the section."""
+    for i, (colour, line) in enumerate(lines):
+        figure.text(left, top - (i * LINE_IN + 0.02) / height_in, line, fontsize=7.5, va="top", color=colour)

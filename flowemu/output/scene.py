@@ -21,7 +21,9 @@ if TYPE_CHECKING:
     from manifold3d import Manifold
 
 CUTS = ("quarter", "half", "whole")
-PIXELS = (1500, 1000)
+PIXELS_WIDE = 1500
+LEAST_PIXELS_HIGH, MOST_PIXELS_HIGH = 650, 1200
+MARGIN = 1.12
 TOWARDS_EYE = np.array([0.62, -1.0, 0.72])
 SHARP_DEG = 32.0
 LEAST_SLOPE = 0.10
@@ -133,7 +135,8 @@ def render(pieces: Sequence[tuple[Manifold, Look]], view: View) -> tuple[np.ndar
     """
     import pyvista
 
-    plotter = pyvista.Plotter(off_screen=True, window_size=list(PIXELS), lighting="none")
+    size = PIXELS_WIDE, pixels_high(view)
+    plotter = pyvista.Plotter(off_screen=True, window_size=list(size), lighting="none")
     try:
         plotter.set_background(theme.PAPER)
         light(plotter, view)
@@ -147,11 +150,11 @@ def render(pieces: Sequence[tuple[Manifold, Look]], view: View) -> tuple[np.ndar
             if edges.n_cells:
                 plotter.add_mesh(edges, color=look.line, line_width=1.6, lighting=False)
         ends = scale_bar(plotter, view)
-        aim(plotter, view)
+        aim(plotter, view, size)
         plotter.add_axes(line_width=3, color=theme.INK, xlabel="x", ylabel="y", zlabel="z", viewport=(0, 0, 0.13, 0.2))
         plotter.enable_anti_aliasing("ssaa")
         picture = plotter.screenshot(return_img=True)
-        return picture, (bar_length(view), np.array([on_paper(plotter, end) for end in ends]))
+        return picture, (bar_length(view), np.array([on_paper(plotter, end, size[1]) for end in ends]))
     finally:
         plotter.close()
 
@@ -175,18 +178,30 @@ def light(plotter: Any, view: View) -> None:
         plotter.add_light(lamp)
 
 
-def aim(plotter: Any, view: View) -> None:
+def aim(plotter: Any, view: View, size: tuple[int, int]) -> None:
     """The same parallel view for all scenes of a run: from the front right, above."""
     away = TOWARDS_EYE / np.linalg.norm(TOWARDS_EYE)
     reach = float(np.linalg.norm(view.size))
     plotter.camera_position = [tuple(view.centre + 3.0 * reach * away), tuple(view.centre), (0.0, 0.0, 1.0)]
     plotter.enable_parallel_projection()
+    half_wide, half_high = half_extents(view)
+    plotter.camera.parallel_scale = MARGIN * max(half_high, half_wide * size[1] / size[0])
+    plotter.reset_camera_clipping_range()
+
+
+def half_extents(view: View) -> tuple[float, float]:
+    """Half the width and half the height that the box takes on paper, um."""
+    away = TOWARDS_EYE / np.linalg.norm(TOWARDS_EYE)
     right = np.cross([0.0, 0.0, 1.0], away)
     right /= np.linalg.norm(right)
     upward = np.cross(away, right)
-    half_wide, half_high = (0.5 * float(np.abs(axis) @ view.size) for axis in (right, upward))
-    plotter.camera.parallel_scale = 1.12 * max(half_high, half_wide * PIXELS[1] / PIXELS[0])
-    plotter.reset_camera_clipping_range()
+    return 0.5 * float(np.abs(right) @ view.size), 0.5 * float(np.abs(upward) @ view.size)
+
+
+def pixels_high(view: View) -> int:
+    """Height of the picture in which the box, at the full width, has no more room above it than beside it."""
+    half_wide, half_high = half_extents(view)
+    return int(np.clip(PIXELS_WIDE * half_high / half_wide, LEAST_PIXELS_HIGH, MOST_PIXELS_HIGH))
 
 
 def bar_length(view: View) -> float:
@@ -207,10 +222,10 @@ def scale_bar(plotter: Any, view: View) -> np.ndarray:
     return ends
 
 
-def on_paper(plotter: Any, point: np.ndarray) -> tuple[float, float]:
+def on_paper(plotter: Any, point: np.ndarray, high: int) -> tuple[float, float]:
     """Where a point is drawn, pixels from the picture's top left."""
     renderer = plotter.renderer
     renderer.SetWorldPoint(*point, 1.0)
     renderer.WorldToDisplay()
     x, y, _ = renderer.GetDisplayPoint()
-    return float(x), PIXELS[1] - float(y)
+    return float(x), high - float(y)

@@ -38,19 +38,21 @@ def watch(before: FilmStack, after: FilmStack, how: str, touched: set[int] | Non
     """
     if os.environ.get(SWITCH) == "1" and after is not before:
         kept = set(range(len(before.films))) - (touched or set())
-        faults = [*not_nested(after), *changed_films(before, after, kept), *wrong_way(before, after, grows=how == "add")]
+        faults = list(changed_films(before, after, kept))
+        faults += [*not_nested(before, after)] if how == "add" else [*lowered(before, after), *grown(before, after)]
         if faults:
             raise BrokenInvariantError(f"{how}: " + "; ".join(faults))
     return after
 
 
-def not_nested(stack: FilmStack) -> Iterator[str]:
-    """Films whose top lies below their floor somewhere."""
-    for film in stack.films:
-        if film.floor is not None:
-            below = float(np.max(film.top - film.floor))
-            if below > ROUNDING * stack.grid.cell:
-                yield f"the top of film '{film.name}' lies up to {below:.3g} um below its floor"
+def not_nested(before: FilmStack, after: FilmStack) -> Iterator[str]:
+    """A film just laid lies on the surface that was there, and its top nowhere below that."""
+    film = after.films[-1]
+    if film.floor is not before.surface:
+        yield f"film '{film.name}' does not lie on the surface that was there"
+    below = float(np.max(film.top - before.surface))
+    if below > ROUNDING * after.grid.cell:
+        yield f"the top of film '{film.name}' lies up to {below:.3g} um below its floor"
 
 
 def changed_films(before: FilmStack, after: FilmStack, kept: set[int]) -> Iterator[str]:
@@ -63,14 +65,23 @@ def changed_films(before: FilmStack, after: FilmStack, kept: set[int]) -> Iterat
             yield f"film '{film.name}' changed although nothing acts on it"
 
 
-def wrong_way(before: FilmStack, after: FilmStack, grows: bool) -> Iterator[str]:
-    """Films that grew under a carve; a solid that shrank under an add."""
+def lowered(before: FilmStack, after: FilmStack) -> Iterator[str]:
+    """Films of which a carve lowered a field: what is gone stays gone."""
+    old = {(f.name, f.step): f for f in before.films}
+    for film in after.films:
+        was = old.get((film.name, film.step))
+        if was is None or was is film:
+            continue
+        for name in ("top", "gone"):
+            a, b = getattr(was, name), getattr(film, name)
+            if a is not None and (b is None or bool((b < a).any())):
+                yield f"the {name} field of film '{film.name}' was lowered by a carve"
+
+
+def grown(before: FilmStack, after: FilmStack) -> Iterator[str]:
+    """Films whose volume grew under a carve."""
     from flowemu.stack.measure import film_volume
 
-    if grows:
-        if float(np.max(after.surface - before.surface)) > ROUNDING * before.grid.cell:
-            yield "the solid's surface sank although a film was added"
-        return
     old = {(f.name, f.step): f for f in before.films}
     for film in after.films:
         was = old.get((film.name, film.step))

@@ -33,9 +33,24 @@ def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray) -> np.ndarr
     everywhere = np.ones(near.shape, bool)
     for _ in range(RINGS):
         near, there = fronts.spread_once(near, there, everywhere)
-    near = np.where(there, near, -np.float32(stack.band))
+    near = _level(np.where(there, near, -np.float32(stack.band)), grid.cell, grid.dz[box[0]])
     out[box] = redistance(near, grid.cell, grid.cell, grid.z[box[0]], stack.band)
     return np.ascontiguousarray(t.on_grid(out))
+
+
+def _level(field: np.ndarray, cell: float, dz: np.ndarray) -> np.ndarray:
+    """The field with jumps through zero, wider than a distance could make, cut down to a cell on either side."""
+    inside = field < 0
+    jump = np.zeros(field.shape, bool)
+    for axis in range(3):
+        low = [slice(None)] * 3
+        high = [slice(None)] * 3
+        low[axis], high[axis] = slice(None, -1), slice(1, None)
+        crossed = inside[tuple(low)] != inside[tuple(high)]
+        jump[tuple(low)] |= crossed
+        jump[tuple(high)] |= crossed
+    most = (1.5 * np.maximum(dz, cell))[:, None, None]
+    return np.where(jump, np.clip(field, -most, most), field).astype(np.float32)
 
 
 def _box(known: np.ndarray) -> tuple[slice, slice, slice]:

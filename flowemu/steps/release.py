@@ -4,7 +4,8 @@
     - release: {with: vapour hf, time: 20 min}
 
 What it models. As `etch`, most often isotropic and on both sides; its time may follow from the parts that it must
-free. A part is free when no film that the release etches touches it any more.
+free. A part is free when no film that the release etches touches it any more; films that it etches less than a
+fiftieth as fast as the fastest, such as the nitride that an anchor stands on, do not count.
 
 with : the etchant, a name in the process data.
 time, depth, clears, until, frees : exactly one of the five; the first four as in `etch`.

@@ -48,7 +48,7 @@ def corner_errors(cell: float, thickness: float) -> np.ndarray:
     """Radius of the film round a corner, less the thickness, um, over a fan and three places of the corner."""
     out = []
     for corner in ((14.3, 12.2), (14.05, 12.5), (14.71, 12.93)):
-        stack = coat(step(cell, corner, 30, 24, ), stacks.blank("film"), thickness)
+        stack = coat(step(cell, corner, 30, 24), stacks.blank("film"), thickness)
         top = stacks.film_of(stack, "film").top
         out.append(stacks.reach(top, stack.grid, corner, FAN, thickness + 3) - thickness)
     return np.concatenate(out)
@@ -92,12 +92,11 @@ def test_a_conformal_film_lines_a_trench():
     left, right, floor = 9.3, 21.3, -9.2
 
     def inside(x, z):
-        across = np.maximum(left - x, x - right)  # negative in the trench
-        hole = np.where((across < 0) & (z > floor), np.minimum(-across, z - floor), -1.0)
-        rim = np.where(z > 0, np.where(across < 0, np.hypot(np.minimum(-across, 0), z), z), -1.0)
-        buried = -np.minimum(-z + 0 * x, np.hypot(np.maximum(across, 0), np.maximum(floor - z, 0)))
-        out = np.where(z > 0, np.minimum(rim, np.where(across < 0, np.hypot(z, -across), z)), hole)
-        return np.where((z <= 0) & ~((across < 0) & (z > floor)), buried, out)
+        into = np.minimum(x - left, right - x) + 0 * z  # positive between the walls
+        hole = np.minimum(into, z - floor)
+        above = np.where(into > 0, np.hypot(into, z), z)
+        buried = np.minimum(-z + 0 * x, np.hypot(np.maximum(-into, 0), np.maximum(floor - z, 0)))
+        return np.where(z > 0, above, np.where(hole > 0, hole, -buried))
 
     stack = coat(stacks.trenched(grid, inside), stacks.blank("film"), 2.6)
     top = stacks.film_of(stack, "film").top
@@ -174,3 +173,13 @@ def test_a_thin_film_over_a_step_is_nowhere_open(thickness, coverage):
         stack = coat(stack, stacks.blank("skin"), thickness, coverage)
         _, times = stacks.front(stack, {"glass": 1.0}).of_film(1)
         assert not np.isfinite(times).any()
+
+
+def test_a_thick_film_after_many_steps_leaves_nothing_afloat():
+    """Films of 1.1 and 5.3 cells after a resist came and went: one film on the other and nothing above them."""
+    grid = stacks.even_grid(20, -4, 12)
+    stack = coat(stacks.bare(grid, 0.2), stacks.blank("low"), 2.3)
+    stack = stacks.stripped(stacks.printed(stack, grid.x - 9.3))
+    stack = coat(coat(stack, stacks.blank("thin", step=2), 1.1), stacks.blank("thick", step=3), 5.3)
+    for x in (3.0, 9.3, 16.0):
+        assert [name for name, _, _ in stacks.layers(stack, x)] == ["wafer", "low", "thin", "thick"]

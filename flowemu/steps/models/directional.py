@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cached_property
+from typing import NamedTuple
 
 import numpy as np
 
-from flowemu.kernels import beam
+from flowemu.kernels import beam, fronts
 from flowemu.stack.removed import complete
 from flowemu.stack.stack import FilmStack
 
@@ -16,6 +17,14 @@ FLAT = 1.10  # a column whose film is thicker than this times the usual is a wal
 CLEARED = 0.95  # share of the open flat that must be through for a film to be called cleared
 EXPOSED = 0.90  # share of the open area over which an endpoint film must show
 MASKS = frozenset({"resist"})  # material classes that shield what is below them from "open area"
+
+
+class Strike(NamedTuple):
+    """Where the beam ends in every column, `(ny, nx)`: its height, where it first met a solid, the film it stops in."""
+
+    floor: np.ndarray
+    entry: np.ndarray
+    stop: np.ndarray
 
 
 @dataclass(frozen=True, eq=False)
@@ -94,51 +103,71 @@ class Beam:
 
     def removed(self, time: float) -> dict[int, np.ndarray]:
         """Removed field of each etched film after `time` s, `(nz, ny, nx)` float32 um."""
-        floor, entry, stop, _ = beam.strike(*self._edges(), self.slowness, time)
-        struck = np.unique(stop[stop >= 0])
-        out = {}
-        for k, rate in self.rates.items():
-            if rate > 0:
-                field = self._removed_film(k, floor, entry, stop, struck)
-                if field is not None:
-                    out[k] = field
-        return out
+        strike = Strike(*beam.strike(*self._edges(), self.slowness, time)[:3])
+        fields = ((k, self._removed_film(k, strike, time)) for k, rate in self.rates.items() if rate > 0)
+        return {k: field for k, field in fields if field is not None}
 
-    def _removed_film(
-        self, k: int, floor: np.ndarray, entry: np.ndarray, stop: np.ndarray, struck: np.ndarray
-    ) -> np.ndarray | None:
+    def _removed_film(self, k: int, strike: Strike, time: float) -> np.ndarray | None:
         t = self.stack.topology
-        sample = _film_samples(self.stack, k)
-        if len(sample) == 0:
-            return None
+        sample, flank = _film_samples(self.stack, k)
         _, ny, nx = t.code.shape
         column = sample % (ny * nx)
         place = self.stack.grid.z[sample // (ny * nx)]
-        reached = place >= floor.reshape(-1)[column]
+        reached = place >= strike.floor.reshape(-1)[column]
         if not reached.any():
             return None
-        side = self._side_distance(k, struck)
-        open_here = np.zeros(ny * nx, bool)
-        open_here[column[reached]] = True
-        ends = np.where(stop == k, floor, -np.inf)  # where it is cut through, only its walls end the cut
-        floor_near, entry_near = _carry_sideways(open_here.reshape(ny, nx), ends, entry)
-        lateral = np.full(len(sample), np.inf) if side is None else side.reshape(-1)[sample].astype(np.float64)
-        shielded = np.isinf(lateral) & ~reached & ~open_here[column]
-        lateral[shielded] = -0.5 * self.stack.grid.cell
-        if self.wall != 90.0:
-            angle = np.radians(self.wall)
-            lateral = (lateral - (entry_near.reshape(-1)[column] - place) / np.tan(angle)) * np.sin(angle)
-        below = place - floor_near.reshape(-1)[column]
-        eroded = reached & (lateral < 0) if self.wall == 90.0 else np.zeros(len(sample), bool)
-        lateral[eroded] = np.inf
+        below = self._depth_below(k, strike, time)[sample]
+        lateral = self._wall_distance(k, strike, sample, reached)
+        lateral = _beside(t.code.shape, sample, flank, lateral)
         both = (below < 0) & (lateral < 0)
         value = np.where(both, -np.hypot(below, lateral), np.minimum(below, lateral))
         known = np.zeros(t.code.size, bool)
         known[sample] = True
         field = np.zeros(t.code.size, np.float32)
-        band = self.stack.band
-        field[sample] = np.clip(value, -band, band)
+        field[sample] = np.clip(value, -self.stack.band, self.stack.band)
         return complete(self.stack, field, known)
+
+    def _depth_below(self, k: int, strike: Strike, time: float) -> np.ndarray:
+        """Height above the etched floor of film `k`, flat over the samples, um; inf where it is cut through.
+
+        The floor is the film's own surface moved down by its rate times the time left on reaching it,
+        so it keeps walls and steps thinner than a cell.
+        """
+        from scipy.ndimage import maximum_filter
+
+        t, band = self.stack.topology, self.stack.band
+        f, shape = t.fields, t.code.shape
+        passing = np.zeros(len(self.stack.films), np.uint8)
+        passing[[q for q in range(len(passing)) if q != k and self.rates.get(q, 0) > 0]] = 1
+        met = beam.through_times(*self._edges(), self.slowness, k, passing)[0]
+        struck = met < time
+        cut = struck & (strike.stop != k)
+        partly = maximum_filter(struck & ~cut, size=5)
+        depth = np.where(struck, self.rates[k] * (time - np.where(struck, met, time)), 0.0)
+        depth, cut = _carry_sideways(struck, depth, cut & ~partly) if struck.any() else (depth, cut)
+        top = f.arrays[f.top[k]].reshape(shape)
+        if f.gone[k] >= 0:
+            top = np.maximum(top, f.arrays[f.gone[k]].reshape(shape))
+        below = beam.moved_down(top, depth, self.stack.grid.z)
+        return np.where(np.broadcast_to(cut, shape), np.float32(band), below).reshape(-1)
+
+    def _wall_distance(self, k: int, strike: Strike, sample: np.ndarray, reached: np.ndarray) -> np.ndarray:
+        """Distance of samples from the walls that the masks above film `k` leave, um, positive in the opening."""
+        t = self.stack.topology
+        _, ny, nx = t.code.shape
+        column = sample % (ny * nx)
+        side = self._side_distance(k, np.unique(strike.stop[strike.stop >= 0]))
+        open_here = np.zeros(ny * nx, bool)
+        open_here[column[reached]] = True
+        lateral = np.full(len(sample), np.inf) if side is None else side.reshape(-1)[sample].astype(np.float64)
+        lateral[np.isinf(lateral) & ~reached & ~open_here[column]] = -0.5 * self.stack.grid.cell
+        if self.wall != 90.0:
+            place = self.stack.grid.z[sample // (ny * nx)]
+            (entry,) = _carry_sideways(open_here.reshape(ny, nx), strike.entry)
+            angle = np.radians(self.wall)
+            return (lateral - (entry.reshape(-1)[column] - place) / np.tan(angle)) * np.sin(angle)
+        lateral[reached & (lateral < 0)] = np.inf  # the mask above is gone there
+        return lateral
 
     def _side_distance(self, k: int, struck: np.ndarray) -> np.ndarray | None:
         """Planar distance to the nearest wall of the masks above film `k`, positive in openings."""
@@ -159,12 +188,32 @@ class Beam:
         return side
 
 
-def _film_samples(stack: FilmStack, k: int) -> np.ndarray:
-    """Flat numbers of the samples in film `k` and of those that have it on an edge of their column."""
+def _film_samples(stack: FilmStack, k: int) -> tuple[np.ndarray, np.ndarray]:
+    """Flat numbers of the samples in film `k` or with it on an axis edge; and which only flank it from another solid."""
     t = stack.topology
     code = t.code.reshape(-1)
-    beside = beam.beside_in_column(t.samples, code, t.count, t.start, t.interval_code, t.strides[2], k)
-    return np.flatnonzero(beside | (code == k))
+    given = t.samples, code, t.count, t.start, t.interval_code, t.strides, k
+    mine = code == k
+    upright = beam.beside_film(*given, 2, 3) | mine
+    sample = np.flatnonzero(beam.beside_film(*given, 0, 2) | upright)
+    return sample, ~upright[sample] & (code[sample] >= 0)
+
+
+def _beside(shape: tuple[int, ...], sample: np.ndarray, flank: np.ndarray, lateral: np.ndarray) -> np.ndarray:
+    """Distances from walls with those of flanking samples taken from their neighbours, inf where those have none.
+
+    A sample in the step that a film covers lies in what would shadow it.
+    """
+    value = np.zeros(int(np.prod(shape)), np.float32)
+    known = np.zeros(len(value), bool)
+    value[sample] = np.minimum(lateral, 1e6)
+    known[sample[~flank]] = True
+    want = np.zeros(len(value), bool)
+    want[sample[flank]] = True
+    value, known = fronts.spread_once(value.reshape(shape), known.reshape(shape), want.reshape(shape))
+    out = lateral.copy()
+    out[flank] = np.where(known.reshape(-1)[sample[flank]], value.reshape(-1)[sample[flank]], np.inf)
+    return out
 
 
 def _carry_sideways(known: np.ndarray, *maps: np.ndarray) -> tuple[np.ndarray, ...]:

@@ -7,13 +7,14 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from flowemu.kernels import fronts, surface
+from flowemu.kernels import fronts, starts, surface
 from flowemu.kernels.march import arrival_on_graph
 from flowemu.kernels.regions import STEP_OF_BITS
 from flowemu.stack.removed import complete
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.topology import Topology
 
+MOST_CROSSINGS = 12  # times that a front may pass from one film into another of the same group
 SLOWEST_SHARE = 1 / 50  # films slower than this share of the fastest get a front of their own
 
 
@@ -54,8 +55,7 @@ class Nodes:
         node_sample = np.concatenate([sample, thin_sample[first]])
         node_film = np.concatenate([code[sample].astype(np.int64), thin_film[first]])
         neighbours = fronts.link(
-            node_sample, node_film, own, keys, len(sample), code, stage, topology.code.shape, topology.row_of,
-            topology.count, topology.start, topology.interval_code,
+            node_sample, node_film, own, keys, len(sample), code, len(stage), topology.code.shape, topology.row_of
         )  # fmt: skip
         return cls(node_sample, node_film, own, keys, len(sample), place, neighbours, stage)
 
@@ -70,6 +70,7 @@ class Front:
     nodes: Nodes
     time: np.ndarray
     beyond: np.ndarray
+    slowness: np.ndarray
 
 
 @dataclass(frozen=True, eq=False)
@@ -158,17 +159,19 @@ def arrive(stack: FilmStack, rates: Mapping[int, float], limit: float = np.inf) 
         nodes = Nodes.of(stack.topology, group)
         slowness = (1.0 / np.array([rates.get(k) or 1.0 for k in range(len(stack.films))]))[nodes.film]
         reach = limit + 1.5 * stack.band * float(np.max(slowness, initial=0.0))
-        mine = Front(nodes, np.full(len(nodes.sample), np.inf), np.zeros(len(nodes.sample)))
+        mine = Front(nodes, np.full(len(nodes.sample), np.inf), np.zeros(len(nodes.sample)), slowness)
         _start_from_void(stack, mine, slowness)
         exact = np.isfinite(mine.time)
         for front in done:
             _start_from_films(stack, mine, slowness, front)
         mine = _march(stack, mine, np.where(exact, np.inf, slowness), reach)
-        if len(group) > 1:
-            again = Front(nodes, mine.time.copy(), mine.beyond)
+        for _ in range(MOST_CROSSINGS if len(group) > 1 else 0):
+            again = Front(nodes, mine.time.copy(), mine.beyond.copy(), slowness)
             _start_from_films(stack, again, slowness, mine)
-            if np.any(again.time < mine.time - 0.02 * stack.grid.cell * slowness):
-                mine = _march(stack, again, np.where(exact, np.inf, slowness), reach)
+            sooner = again.time < mine.time - 0.02 * stack.grid.cell * slowness
+            if not sooner.any():
+                break
+            mine = _march(stack, again, np.where(exact | sooner, np.inf, slowness), reach)
         done.append(mine)
     return Arrival(stack, dict(rates), tuple(done))
 
@@ -181,33 +184,72 @@ def _march(stack: FilmStack, front: Front, slowness: np.ndarray, limit: float) -
     time = arrival_on_graph(
         front.time, slowness.astype(np.float32), nodes.neighbours, zi, cell, cell, stack.grid.z, limit
     )
-    return Front(nodes, np.asarray(time, np.float64), front.beyond)
+    return Front(nodes, np.asarray(time, np.float64), front.beyond, front.slowness)
 
 
-def _start(stack: FilmStack, front: Front, slowness: np.ndarray, source: np.ndarray, base: np.ndarray) -> None:
-    """Lower the front's times beside what it starts from (they are the front's own arrays)."""
-    t, nodes = stack.topology, front.nodes
-    f, grid = t.fields, stack.grid
-    is_open = np.zeros(len(t.piece), np.uint8)
-    is_open[t.open_roots] = 1
-    fronts.start_times(
-        t.cells, base, t.corner_offsets, STEP_OF_BITS, t.code.shape, t.row_of, t.values, t.code.reshape(-1), t.count,
-        t.start, t.interval_code, f.top, f.floor, f.gone, nodes.stage, source, is_open, t.piece, nodes.own, nodes.keys,
-        nodes.first_thin, nodes.place, slowness, grid.z, grid.cell, grid.cell, front.time, front.beyond,
+@dataclass(frozen=True, eq=False)
+class Faces:
+    """Bare triangles of the films that a front etches, `(n, 3, 3)` um, cell after cell from `first`."""
+
+    triangles: np.ndarray
+    films: np.ndarray
+    cell: np.ndarray
+    first: np.ndarray
+    number: np.ndarray
+    partly: np.ndarray
+
+    @classmethod
+    def of(cls, stack: FilmStack, nodes: Nodes, source: np.ndarray) -> Faces:
+        t, grid = stack.topology, stack.grid
+        f = t.fields
+        is_open = np.zeros(len(t.piece), np.uint8)
+        is_open[t.open_roots] = 1
+        given = (
+            t.cells, t.corner_offsets, STEP_OF_BITS, t.code.shape, t.row_of, t.values, t.code.reshape(-1), t.count,
+            t.start, t.interval_code, f.top, f.floor, f.gone, nodes.stage, source, is_open, t.piece, grid.z, grid.cell,
+            grid.cell,
+        )  # fmt: skip
+        nothing = np.zeros(1, np.int64), np.empty((0, 3, 3)), np.empty(0, np.int16)
+        number, partly = starts.bare_triangles(*given, *nothing)
+        first = np.zeros(len(t.cells) + 1, np.int64)
+        np.cumsum(number, out=first[1:])
+        triangles, films = np.empty((first[-1], 3, 3)), np.empty(first[-1], np.int16)
+        if len(films):
+            starts.bare_triangles(*given, first, triangles, films)
+        return cls(triangles, films, np.repeat(np.arange(len(t.cells)), number), first, number, partly)
+
+
+def _start(stack: FilmStack, front: Front, slowness: np.ndarray, faces: Faces, base: np.ndarray) -> None:
+    """Lower the front's times (its own arrays) near the faces that it starts from."""
+    t, grid, nodes = stack.topology, stack.grid, front.nodes
+    reach = np.empty(len(nodes.sample), np.int8)
+    starts.reach_of_nodes(
+        nodes.sample, nodes.film, t.cells, faces.number, faces.partly, t.code.shape, len(stack.films), reach
+    )
+    listed = np.flatnonzero(reach >= 0)
+    cell_row = np.full(t.code.size, -1, np.int32)
+    cell_row[t.cells] = np.arange(len(t.cells), dtype=np.int32)
+    starts.nearest_starts(
+        listed, nodes.sample, nodes.film, nodes.place, reach[listed], cell_row, faces.first, faces.triangles,
+        faces.films, base, slowness, t.code.reshape(-1), t.row_of, t.values, t.fields.top, t.fields.floor,
+        t.fields.gone, t.code.shape, grid.z, grid.cell, grid.cell, front.time, front.beyond,
     )  # fmt: skip
 
 
 def _start_from_void(stack: FilmStack, front: Front, slowness: np.ndarray) -> None:
     source = np.zeros(2 * (len(stack.films) + 1) + 1, np.uint8)
-    _start(stack, front, slowness, source, np.zeros(len(stack.topology.cells)))
+    faces = Faces.of(stack, front.nodes, source)
+    _start(stack, front, slowness, faces, np.zeros(len(faces.films)))
 
 
 def _start_from_films(stack: FilmStack, front: Front, slowness: np.ndarray, earlier: Front) -> None:
-    t = stack.topology
+    t, grid = stack.topology, stack.grid
     films = len(stack.films)
     source = np.zeros(2 * (films + 1) + 1, np.uint8)
     source[films + 1 :][:films][earlier.nodes.stage > 0] = 1
-    base = fronts.cell_base_times(
-        t.cells, t.corner_offsets, t.code.reshape(-1), source, films + 1, earlier.nodes.own, earlier.time
-    )
-    _start(stack, front, slowness, source, base)
+    faces = Faces.of(stack, front.nodes, source)
+    base = starts.face_times(
+        faces.triangles, faces.cell, t.cells, t.corner_offsets, t.code.shape, t.code.reshape(-1), source,
+        earlier.nodes.own, earlier.time, earlier.slowness, grid.z, grid.cell, grid.cell,
+    )  # fmt: skip
+    _start(stack, front, slowness, faces, base)

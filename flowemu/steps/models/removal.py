@@ -16,7 +16,7 @@ from flowemu.stack.measure import film_volume
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.wafer import Cut, Freed, Loss, Wafer
 from flowemu.steps.models.directional import Beam
-from flowemu.steps.models.isotropic import Arrival, arrive
+from flowemu.steps.models.isotropic import SLOWEST_SHARE, Arrival, arrive
 
 MEANT_SHARE = 0.2  # without `clears`, films etched at this share of the fastest that was met are meant
 TOUCHED = 1e-3  # um3; a smaller loss is rounding
@@ -305,11 +305,15 @@ def _dense(arrival: Arrival, t: Any) -> np.ndarray:
 
 
 def free_time(arrival: Arrival, part: Part) -> Freed:
-    """When nothing that the etch removes touches the part any more, and where that happens last."""
+    """When nothing that the etch removes touches the part any more, and where that happens last.
+
+    Films far slower than the fastest, such as a nitride that an anchor stands on, do not count.
+    """
     stack, t = arrival.stack, arrival.stack.topology
     last, film, where = 0.0, None, None
+    slowest = SLOWEST_SHARE * max(arrival.rates.values(), default=0.0)
     for k, rate in arrival.rates.items():
-        if rate <= 0 or k in part.films:
+        if rate <= slowest or k in part.films:
             continue
         sample, times = arrival.of_film(k)
         dense = np.full(t.code.size, np.inf)
