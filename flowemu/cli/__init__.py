@@ -61,7 +61,7 @@ def main(args: Sequence[str] | None = None) -> int:
         _say(["flowemu: stopped"])
         return INTERRUPTED
     except click.ClickException as error:
-        error.show()
+        _say([_wrong_use(error)])
         return FAILED
     except FlowemuError as error:
         _say(error.lines())
@@ -71,6 +71,13 @@ def main(args: Sequence[str] | None = None) -> int:
         return OK
     except Exception as error:
         return _internal(error)
+
+
+def _wrong_use(error: click.ClickException) -> str:
+    """One line for a command line that cannot be read."""
+    text = " ".join(error.format_message().split())
+    context = getattr(error, "ctx", None)
+    return f"flowemu: {text}" + (f" (see {context.command_path} --help)" if context else "")
 
 
 def _internal(error: Exception) -> int:

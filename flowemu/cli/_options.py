@@ -43,19 +43,21 @@ class Lengths(click.ParamType):
 
 
 class CellSize(click.ParamType):
-    """A length above zero, with its unit."""
+    """The edge of a cell, with its unit."""
 
     name = "length"
 
     def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> float:
         if isinstance(value, float):
             return value
+        from flowemu.flow.quantities import LEAST_CELL
+
         try:
             length = units.parse(str(value), "length")
         except ValueError as error:
             self.fail(str(error), param, ctx)
-        if length <= 0.0:
-            self.fail(f"'{value}' is not above zero", param, ctx)
+        if length < LEAST_CELL:
+            self.fail(f"'{value}' is below {units.show(LEAST_CELL, 'length')}", param, ctx)
         return length
 
 

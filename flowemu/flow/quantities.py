@@ -93,6 +93,8 @@ def quantity_in(field: Any) -> Quantity | None:
 
 Length = Annotated[float, Quantity("length")]
 PositiveLength = Annotated[float, Quantity("length", above=0.0)]
+LEAST_CELL = 1e-4  # um: nothing is finer than the spacing of atoms
+CellLength = Annotated[float, Quantity("length", least=LEAST_CELL)]
 LengthFromZero = Annotated[float, Quantity("length", least=0.0)]
 Duration = Annotated[float, Quantity("time", above=0.0)]
 Rate = Annotated[float, Quantity("rate", least=0.0)]

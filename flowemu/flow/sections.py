@@ -6,7 +6,7 @@ from typing import Annotated, Any, ClassVar, Literal
 
 from pydantic import ConfigDict, Field, WithJsonSchema
 
-from flowemu.flow.quantities import Length, LengthFromZero, PositiveLength
+from flowemu.flow.quantities import CellLength, Length, LengthFromZero, PositiveLength
 from flowemu.flow.settings import OrShort, Settings
 from flowemu.flow.words import Box, Date, Layer, Name, Orientation, Point, Text
 
@@ -54,7 +54,7 @@ class WaferSection(Settings):
 class GridSection(Settings):
     """The cells that the geometry is sampled on."""
 
-    cell: PositiveLength = Field(description="Edge of a cell in x and y.")
+    cell: CellLength = Field(description="Edge of a cell in x and y.")
     planes: tuple[Length, ...] | None = Field(None, description="Boundaries of the cells in z, rising.")
 
 

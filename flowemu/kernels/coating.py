@@ -69,10 +69,15 @@ def normalise(field, counts, zc, dx, dy):
         for y in range(ny):
             for x in range(nx):
                 f = field[z, y, x]
-                x0, x1, y0, y1, z0, z1 = max(x - 1, 0), min(x + 1, nx - 1), max(y - 1, 0), min(y + 1, ny - 1), max(z - 1, 0), min(z + 1, nz - 1)  # fmt: skip
-                gx = _slope_along(field[z, y, x0], f, field[z, y, x1], dx, dx, x > 0 and counts[z, y, x0], x + 1 < nx and counts[z, y, x1])  # fmt: skip
-                gy = _slope_along(field[z, y0, x], f, field[z, y1, x], dy, dy, y > 0 and counts[z, y0, x], y + 1 < ny and counts[z, y1, x])  # fmt: skip
-                gz = _slope_along(field[z0, y, x], f, field[z1, y, x], zc[z] - zc[z0], zc[z1] - zc[z], z > 0 and counts[z0, y, x], z + 1 < nz and counts[z1, y, x])  # fmt: skip
+                x0, x1 = max(x - 1, 0), min(x + 1, nx - 1)
+                y0, y1 = max(y - 1, 0), min(y + 1, ny - 1)
+                z0, z1 = max(z - 1, 0), min(z + 1, nz - 1)
+                low, high = x > 0 and counts[z, y, x0], x + 1 < nx and counts[z, y, x1]
+                gx = _slope_along(field[z, y, x0], f, field[z, y, x1], dx, dx, low, high)
+                low, high = y > 0 and counts[z, y0, x], y + 1 < ny and counts[z, y1, x]
+                gy = _slope_along(field[z, y0, x], f, field[z, y1, x], dy, dy, low, high)
+                low, high = z > 0 and counts[z0, y, x], z + 1 < nz and counts[z1, y, x]
+                gz = _slope_along(field[z0, y, x], f, field[z1, y, x], zc[z] - zc[z0], zc[z1] - zc[z], low, high)
                 norm = np.sqrt(gx * gx + gy * gy + gz * gz)
                 if norm > 0.1:
                     out[z, y, x] = f / norm
@@ -96,3 +101,80 @@ def heights(surface, zc):
                     out[y, x] = zc[z] + a / (a - b) * (zc[z + 1] - zc[z])
                     break
     return out
+
+
+@njit(cache=True, parallel=True)
+def kept_out(sealed, surface, band):
+    """A removed field that keeps a film out of sealed voids, `(nz, ny, nx)` float32.
+
+    Positive in them and, by next to nothing, at the samples beside them, so that the film ends at
+    their walls; minus the band elsewhere.
+    """
+    nz, ny, nx = sealed.shape
+    out = np.full((nz, ny, nx), -band, np.float32)
+    for z in prange(nz):
+        for y in range(ny):
+            for x in range(nx):
+                if sealed[z, y, x]:
+                    out[z, y, x] = max(surface[z, y, x], 1e-4)
+                    continue
+                for a in range(max(z - 1, 0), min(z + 2, nz)):
+                    for b in range(max(y - 1, 0), min(y + 2, ny)):
+                        for c in range(max(x - 1, 0), min(x + 2, nx)):
+                            if sealed[a, b, c]:
+                                out[z, y, x] = 1e-4
+    return out
+
+
+@njit(cache=True)
+def _cover_triangle(top, f, g, counts, least, i, j, k):
+    """Lower `top` at three samples so that it is at most -least where f and g are both zero between them."""
+    f0, f1, f2 = f[i], f[j] - f[i], f[k] - f[i]
+    g0, g1, g2 = g[i], g[j] - g[i], g[k] - g[i]
+    d = f1 * g2 - f2 * g1
+    if abs(d) < 1e-12:
+        return
+    u = (f2 * g0 - f0 * g2) / d
+    v = (f0 * g1 - f1 * g0) / d
+    if u < 0 or v < 0 or u + v > 1:
+        return
+    w = 1 - u - v
+    much = w * top[i] + u * top[j] + v * top[k] + least
+    if much <= 0:
+        return
+    total = (w * w if counts[i] else 0.0) + (u * u if counts[j] else 0.0) + (v * v if counts[k] else 0.0)
+    if total < 1e-6:
+        return
+    if counts[i]:
+        top[i] -= much * w / total
+    if counts[j]:
+        top[j] -= much * u / total
+    if counts[k]:
+        top[k] -= much * v / total
+
+
+@njit(cache=True)
+def cover_corners(top, face, gone, open_space, least):
+    """Lower `top` in the open samples round each corner of a film, so that the corner lies `least` um under it.
+
+    A corner is where `face` (the film's top or floor) and `gone` are both zero. The division of the
+    grid's faces is that of `kernels.regions`.
+    """
+    nz, ny, nx = top.shape
+    t, f, g, counts = top.reshape(-1), face.reshape(-1), gone.reshape(-1), open_space.reshape(-1)
+    steps = ((1, nx, 0, 1, 1), (1, ny * nx, 1, 0, 1), (nx, ny * nx, 1, 1, 0))
+    for z in range(nz):
+        for y in range(ny):
+            for x in range(nx):
+                i = (z * ny + y) * nx + x
+                for a, b, dz, dy, dx in steps:
+                    if z + dz >= nz or y + dy >= ny or x + dx >= nx:
+                        continue
+                    below = (f[i] < 0) + (f[i + a] < 0) + (f[i + b] < 0) + (f[i + a + b] < 0)
+                    if below == 0 or below == 4:
+                        continue
+                    cut = (g[i] < 0) + (g[i + a] < 0) + (g[i + b] < 0) + (g[i + a + b] < 0)
+                    if cut == 0 or cut == 4:
+                        continue
+                    _cover_triangle(t, f, g, counts, least, i, i + a, i + a + b)
+                    _cover_triangle(t, f, g, counts, least, i, i + b, i + a + b)

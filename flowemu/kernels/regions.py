@@ -17,7 +17,7 @@ import numpy as np
 from numba import njit, prange
 
 MAX_INTERVALS = 24
-SLIVER = 1e-3  # shortest interval of an edge that counts, as a share of the edge
+SLIVER = 2e-4  # shortest interval of an edge that counts, as a share of the edge
 CRACK = 0.02  # the same for a void between two solids: thinner ones come of cut corners, not of gaps
 
 # Edges of the division leave a sample towards these neighbours (dz, dy, dx).
@@ -87,7 +87,8 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
     """Cut the edge between two samples into intervals of one code.
 
     Writes the codes and the intervals' upper ends (share of the edge, the last is 1) and returns
-    their number; intervals shorter than `SLIVER` are dropped.
+    their number; intervals shorter than `SLIVER` are dropped. The first and the last always have the
+    codes of the samples at the ends: a crossing at a sample is moved off it by two slivers.
     """
     cuts = np.empty(MAX_INTERVALS, np.float64)
     n = 0
@@ -95,7 +96,7 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
         a = va[f]
         b = vb[f]
         if (a < 0) != (b < 0) and n < MAX_INTERVALS - 1:
-            c = a / (a - b)
+            c = min(max(a / (a - b), 2 * SLIVER), 1 - 2 * SLIVER)
             j = n
             while j > 0 and cuts[j - 1] > c:
                 cuts[j] = cuts[j - 1]
@@ -107,12 +108,17 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
     m = 0
     for j in range(n + 1):
         high = cuts[j] if j < n else 1.0
-        if high - low < SLIVER and not (j == n and m == 0):
+        if high - low < SLIVER and n > 0:
             continue
-        s = 0.5 * (low + high)
-        for f in range(va.size):
-            mid[f] = va[f] + s * (vb[f] - va[f])
-        code = code_of(mid, ti, bi, gi)
+        if j == 0:
+            code = code_of(va, ti, bi, gi)
+        elif j == n:
+            code = code_of(vb, ti, bi, gi)
+        else:
+            s = 0.5 * (low + high)
+            for f in range(va.size):
+                mid[f] = va[f] + s * (vb[f] - va[f])
+            code = code_of(mid, ti, bi, gi)
         if m > 0 and code_out[m - 1] == code:
             end_out[m - 1] = high
         else:

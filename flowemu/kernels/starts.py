@@ -220,7 +220,7 @@ def bare_triangles(
     number : (cells,) int32
     partly : (cells,) uint8, where a face of a film ends under a cover
     """
-    nz, ny, nx = shape
+    _, ny, nx = shape
     films = stage.size
     nf = values.shape[1]
     number = np.zeros(cells.size, np.int32)
@@ -419,7 +419,7 @@ def nearest_starts(
                             start = base_time[q] + d * slowness[a]
                             if start >= best:
                                 continue
-                            if turn == 1 and not _sees(  # fmt: skip
+                            if turn == 1 and not _sees(
                                 px, py, pz, qx, qy, qz, film, code, cell_row, row_of, values, ti, bi, gi, shape,
                                 zc, dx, dy, mid,
                             ):
@@ -437,7 +437,7 @@ def face_times(triangles, cell_of, cells, corner_offsets, shape, code, source, n
 
     `node_of (n,)` gives the front's node of a sample's own film, -1 for none.
     """
-    nz, ny, nx = shape
+    _, ny, nx = shape
     offset = source.size // 2
     out = np.full(triangles.shape[0], np.inf)
     for q in prange(triangles.shape[0]):

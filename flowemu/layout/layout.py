@@ -4,11 +4,14 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from pathlib import Path
-
-import numpy as np
+from typing import TYPE_CHECKING
 
 from flowemu.errors import LayoutError, near_miss
-from flowemu.layout.masks import Mask
+
+if TYPE_CHECKING:
+    import numpy as np
+
+    from flowemu.layout.masks import Mask
 
 Pair = tuple[int, int]
 
@@ -73,6 +76,8 @@ class Layout:
 
     def mask(self, name: str, layer: int, datatype: int = 0) -> Mask:
         """The layer as a mask; raises as `polygons` does."""
+        from flowemu.layout.masks import Mask
+
         return Mask(name, layer, datatype, tuple(self.polygons(layer, datatype)))
 
     def labels(self, layer: int, texttype: int = 0) -> list[tuple[str, float, float]]:

@@ -11,11 +11,13 @@ import subprocess
 import sys
 from collections.abc import Iterable
 from pathlib import Path
-
-import numpy as np
+from typing import TYPE_CHECKING
 
 from flowemu.errors import LayoutError
 from flowemu.layout.layout import Layout, Pair, missing_cell
+
+if TYPE_CHECKING:
+    import numpy as np
 
 TIME_LIMIT = 120.0
 """Seconds after which a reader is taken to hang on a damaged file."""
@@ -90,8 +92,8 @@ def _kind(content: bytes) -> str:
     return "a file of another kind, or damaged at its start"
 
 
-def _ask(file: Path, request: dict, time_limit: float) -> tuple[dict, np.ndarray]:
-    """Run the child; its JSON object and the vertices `(n, 2)` float64."""
+def _ask(file: Path, request: dict, time_limit: float) -> tuple[dict, bytes]:
+    """Run the child; its JSON object and the vertices `(n, 2)` float64 as bytes."""
     home = str(Path(__file__).parents[2])
     paths = os.pathsep.join(filter(None, [home, os.environ.get("PYTHONPATH")]))
     command = [sys.executable, "-P", "-m", "flowemu.layout.child", str(file.resolve())]
@@ -111,15 +113,17 @@ def _ask(file: Path, request: dict, time_limit: float) -> tuple[dict, np.ndarray
     return _reply(file, done)
 
 
-def _reply(file: Path, done: subprocess.CompletedProcess[bytes]) -> tuple[dict, np.ndarray]:
+def _reply(file: Path, done: subprocess.CompletedProcess[bytes]) -> tuple[dict, bytes]:
     if done.returncode != 0:
         raise _fault(file, f"the file is damaged ({_ending(done.returncode, done.stderr)})")
     try:
         length = struct.unpack("<Q", done.stdout[:8])[0]
         header = json.loads(done.stdout[8 : 8 + length])
-        vertices = np.frombuffer(done.stdout[8 + length :], dtype="<f8").reshape(-1, 2)
     except (struct.error, ValueError):
         raise _fault(file, "the file is damaged (the reader stopped before its end)") from None
+    vertices = done.stdout[8 + length :]
+    if len(vertices) % 16:
+        raise _fault(file, "the file is damaged (the reader stopped before its end)")
     return header, vertices
 
 
@@ -139,13 +143,23 @@ def _fault(file: Path, text: str) -> LayoutError:
     return LayoutError(f"layout '{file.name}' could not be read: {text}")
 
 
-def _layout(file: Path, digest: str, header: dict, vertices: np.ndarray) -> Layout:
+def _loops(header: dict, content: bytes) -> dict[Pair, list[np.ndarray]]:
+    """The merged contours of every layer that was asked for, `(n, 2)` float64 um each."""
+    if not header["loops"]:
+        return {}
+    import numpy as np
+
+    vertices = np.frombuffer(content, dtype="<f8").reshape(-1, 2)
     loops: dict[Pair, list[np.ndarray]] = {}
     start = 0
     for layer, datatype, lengths in header["loops"]:
         ends = start + np.cumsum(lengths, dtype=int)
         loops[(layer, datatype)] = [vertices[end - n : end] for end, n in zip(ends, lengths, strict=True)]
         start = int(ends[-1]) if len(ends) else start
+    return loops
+
+
+def _layout(file: Path, digest: str, header: dict, vertices: bytes) -> Layout:
     return Layout(
         path=file,
         sha256=digest,
@@ -154,6 +168,6 @@ def _layout(file: Path, digest: str, header: dict, vertices: np.ndarray) -> Layo
         cell=header["cell"],
         box=tuple(header["box"]) if header["box"] else None,
         layers={(a, b): count for a, b, count in header["layers"]},
-        loops=loops,
+        loops=_loops(header, vertices),
         texts=tuple(tuple(text) for text in header["labels"]),
     )

@@ -12,7 +12,7 @@ from flowemu.stack.film import BAND, Film
 from flowemu.stack.grid import Grid
 from flowemu.stack.topology import Topology
 
-SAME = 1e-3  # of a cell: a smaller change of the surface is rounding, and the old value stays
+SAME = 2e-4  # of a cell: a smaller change of the surface is rounding, and the old value stays
 
 
 def recut_surface(grid: Grid, films: Sequence[Film], topology: Topology, old: np.ndarray) -> np.ndarray:
@@ -37,7 +37,8 @@ def recut_surface(grid: Grid, films: Sequence[Film], topology: Topology, old: np
     new[solid] = -np.maximum(inside[solid], 1e-6)
     marched = redistance(new, grid.cell, grid.cell, grid.z, band)
     new = np.where(solid, marched, new)
-    same = (np.abs(new - old) < SAME * grid.cell) | ((np.minimum(new * np.sign(old), np.abs(old)) > 0.75 * band))
+    far = (np.minimum(np.abs(new), np.abs(old)) >= band) & ((new < 0) == (old < 0))
+    same = far | (np.abs(new - old) < SAME * grid.cell)
     return np.where(same, old, new)
 
 

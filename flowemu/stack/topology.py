@@ -114,7 +114,7 @@ class Topology:
         wide = [Film(f.name, f.material, f.state, f.step, thick(f.top), thick(f.floor), thick(f.gone)) for f in films]  # type: ignore[arg-type]
         table = FieldTable.of(wide)
         shape = wide[0].top.shape
-        nz, ny, nx = shape
+        _, ny, nx = shape
         code = film_codes(wide, shape)
         mixed = regions.mixed_cells(code)
         samples = np.flatnonzero(regions.near_samples(mixed))

@@ -76,7 +76,7 @@ def test_a_thin_film_is_etched_from_its_side(gap, plate):
 
 @pytest.mark.parametrize("gap", THIN)
 def test_the_front_gets_to_every_place_of_a_thin_film_in_its_time(gap):
-    """At a distance d from the hole d < T < sqrt(d^2 + gap^2), to 0.15 cell: no place is left out and none comes early."""
+    """At a distance d from the hole d < T < sqrt(d^2 + gap^2), to 0.15 cell: no place is left out, none comes early."""
     for offset in offsets():
         stack = bridge(gap, 1.0, offset)
         arrival = stacks.front(stack, {"sac": 1.0})

@@ -73,6 +73,7 @@ def test_the_step_kind_keeps_every_promise(recipes: tuple[ModuleType, ModuleType
 def test_a_flow_may_use_the_step_and_the_check_speaks(
     recipes: tuple[ModuleType, ModuleType], tmp_path: Path
 ) -> None:
+    (tmp_path / "die.gds").touch()
     (tmp_path / "flow.yaml").write_text(FLOW)
     flow = load_flow(str(tmp_path / "flow.yaml"), ())
     assert (flow.steps[0].verb, flow.steps[0].settings.time) == ("clean", 600.0)
@@ -94,6 +95,7 @@ def test_the_step_refuses_resist(recipes: tuple[ModuleType, ModuleType]) -> None
 
 
 def test_without_the_file_the_step_is_not_built(tmp_path: Path) -> None:
+    (tmp_path / "die.gds").touch()
     (tmp_path / "flow.yaml").write_text(FLOW)
     with pytest.raises(InputError, match="clean"):
         load_flow(str(tmp_path / "flow.yaml"), ())

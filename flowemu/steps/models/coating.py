@@ -32,9 +32,20 @@ def coat(stack: FilmStack, film: Film, thickness: float, coverage: float = 1.0) 
     if coverage < 1.0:
         top = kernel.normalise(top.astype(np.float32), open_space, grid.z, grid.cell, grid.cell)
         top = redistance(top, grid.cell, grid.cell, grid.z, stack.band)
-    sealed = ~open_space & (surface > 0)
-    top = np.where(sealed, np.maximum(surface, top), top)
-    return stack.add(_topped(film, np.minimum(top, np.where(sealed, np.inf, surface))))
+    if thickness * coverage < grid.cell:
+        top = _over_corners(stack, top, open_space, 0.5 * thickness * coverage)
+    return _laid(stack, film, np.minimum(top, surface), open_space)
+
+
+def _over_corners(stack: FilmStack, top: np.ndarray, open_space: np.ndarray, least: float) -> np.ndarray:
+    """The top of a thin film, raised where the sharp corner of a film below would come through it."""
+    top = np.ascontiguousarray(top, np.float32)
+    for film in stack.films:
+        if film.gone is not None:
+            for face in (film.top, film.floor):
+                if face is not None:
+                    kernel.cover_corners(top, face, film.gone, open_space, np.float32(least))
+    return top
 
 
 def spin(stack: FilmStack, film: Film, thickness: float, planarisation: float = 1.0, length: float = 10.0) -> FilmStack:
@@ -53,13 +64,10 @@ def spin(stack: FilmStack, film: Film, thickness: float, planarisation: float = 
     z = grid.z[:, None, None]
     top = (z - top_height[None]).astype(np.float32)
     if planarisation < 1:
-        top = redistance(
-            kernel.normalise(top, np.ones(top.shape, bool), grid.z, grid.cell, grid.cell), grid.cell, grid.cell, grid.z, stack.band
-        )
+        near = kernel.normalise(top, np.ones(top.shape, bool), grid.z, grid.cell, grid.cell)
+        top = redistance(near, grid.cell, grid.cell, grid.z, stack.band)
     open_space = stack.topology.on_grid(stack.topology.open_space)
-    sealed = ~open_space & (stack.surface > 0)
-    top = np.where(sealed, np.maximum(stack.surface, top), np.minimum(top, stack.surface))
-    return stack.add(_topped(film, top))
+    return _laid(stack, film, np.minimum(top, stack.surface), open_space)
 
 
 def surface_heights(stack: FilmStack) -> np.ndarray:
@@ -67,5 +75,12 @@ def surface_heights(stack: FilmStack) -> np.ndarray:
     return kernel.heights(stack.surface, stack.grid.z)
 
 
-def _topped(film: Film, top: np.ndarray) -> Film:
-    return Film(film.name, film.material, film.state, film.step, np.ascontiguousarray(top, np.float32))
+def _laid(stack: FilmStack, film: Film, top: np.ndarray, open_space: np.ndarray) -> FilmStack:
+    """The stack with the film on it; sealed voids get none of it."""
+    sealed = ~open_space & (stack.surface > 0)
+    gone = None
+    if sealed.any():
+        top = np.where(sealed, stack.surface, top)
+        gone = kernel.kept_out(sealed, stack.surface, np.float32(stack.band))
+    top = np.ascontiguousarray(top, np.float32)
+    return stack.add(Film(film.name, film.material, film.state, film.step, top, None, gone))

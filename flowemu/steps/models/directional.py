@@ -103,6 +103,8 @@ class Beam:
 
     def removed(self, time: float) -> dict[int, np.ndarray]:
         """Removed field of each etched film after `time` s, `(nz, ny, nx)` float32 um."""
+        if time <= 0:
+            return {}
         strike = Strike(*beam.strike(*self._edges(), self.slowness, time)[:3])
         fields = ((k, self._removed_film(k, strike, time)) for k, rate in self.rates.items() if rate > 0)
         return {k: field for k, field in fields if field is not None}
@@ -189,7 +191,7 @@ class Beam:
 
 
 def _film_samples(stack: FilmStack, k: int) -> tuple[np.ndarray, np.ndarray]:
-    """Flat numbers of the samples in film `k` or with it on an axis edge; and which only flank it from another solid."""
+    """Flat numbers of the samples in film `k` or with it on an axis edge; which only flank it from another solid."""
     t = stack.topology
     code = t.code.reshape(-1)
     given = t.samples, code, t.count, t.start, t.interval_code, t.strides, k

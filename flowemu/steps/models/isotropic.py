@@ -95,7 +95,7 @@ class Arrival:
 
     def removed(self, time: float) -> dict[int, np.ndarray]:
         """Removed field of each etched film after `time` s, `(nz, ny, nx)` float32 um."""
-        return {k: self._removed_film(k, rate, time) for k, rate in self.rates.items() if rate > 0}
+        return {k: self._removed_film(k, rate, time) for k, rate in self.rates.items() if rate > 0 and time > 0}
 
     def _removed_film(self, k: int, rate: float, time: float) -> np.ndarray:
         stack, topology = self.stack, self.stack.topology

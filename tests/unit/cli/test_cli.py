@@ -87,7 +87,8 @@ def test_lint_of_several_flows_tells_of_each(die: Path, capsys: pytest.CaptureFi
     ("arguments", "says"),
     [
         (["lnt"], "there is no command 'lnt'; did you mean 'lint'?"),
-        (["lint"], "Missing argument 'FLOW...'"),
+        (["lint"], "flowemu: Missing argument 'FLOW...'. (see flowemu lint --help)"),
+        (["run", "f.yaml", "--cell", "1e-30 um"], "'1e-30 um' is below 0.1 nm"),
         (["run", "f.yaml", "--cell", "0.5"], "'0.5' has no unit"),
         (["run", "f.yaml", "--fail-on", "all"], "'all' is not one of"),
         (["probe", "f.yaml", "--at", "3"], "expected 2 lengths"),
@@ -144,7 +145,7 @@ def test_lengths_on_the_command_line_are_um_unless_they_say_otherwise() -> None:
     assert Lengths(2).convert("1,-2.5", None, None) == (1.0, -2.5)
     assert Lengths(2).convert("1 mm, 500 nm", None, None) == (1000.0, 0.5)
     assert CellSize().convert("0.5um", None, None) == 0.5
-    with pytest.raises(click.BadParameter, match="not above zero"):
+    with pytest.raises(click.BadParameter, match="is below 0.1 nm"):
         CellSize().convert("0 um", None, None)
 
 

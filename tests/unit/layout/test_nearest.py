@@ -6,9 +6,9 @@ import numpy as np
 import pytest
 from shapely import MultiPolygon, Point, Polygon
 
-from flowemu.layout import merge, nearest
+from flowemu.layout import merge
 from flowemu.layout.contours import segments_of
-from flowemu.layout.nearest import contains
+from flowemu.layout.nearest import contains, nearest
 from tests.unit.layout.drawings import circle, square
 
 UNIT = merge([square(0, 0, 1, 1)])

@@ -9,8 +9,9 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from flowemu.layout import nearest, read_layout, thin_places
+from flowemu.layout import read_layout, thin_places
 from flowemu.layout.contours import signed_area
+from flowemu.layout.nearest import nearest
 
 LAYOUTS = Path(__file__).parents[3] / "layouts"
 DIE = LAYOUTS / "saltmarsh.gds"

@@ -53,7 +53,8 @@ def test_a_lowered_field_and_a_grown_film_are_named(pair):
 def test_what_was_gone_may_not_come_back(pair):
     _, after = pair
     high = after.films[after.index("high")]
-    cut = after.carve({after.index("high"): np.ascontiguousarray(np.broadcast_to(2 - after.grid.x, after.grid.shape), np.float32)})
+    removed = np.ascontiguousarray(np.broadcast_to(2 - after.grid.x, after.grid.shape), np.float32)
+    cut = after.carve({after.index("high"): removed})
     back = with_films(cut, high=replace(high, gone=None))
     assert "gone field of film 'high'" in next(invariants.lowered(cut, back))
 
