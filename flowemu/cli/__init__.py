@@ -60,6 +60,9 @@ def main(args: Sequence[str] | None = None) -> int:
     except (KeyboardInterrupt, click.Abort):
         _say(["flowemu: stopped"])
         return INTERRUPTED
+    except click.exceptions.NoArgsIsHelpError as error:
+        error.show()
+        return FAILED
     except click.ClickException as error:
         _say([_wrong_use(error)])
         return FAILED

@@ -57,31 +57,52 @@ def _slope_along(before, here, after, low, high, has_low, has_high):
 
 
 @njit(cache=True, parallel=True)
-def normalise(field, counts, zc, dx, dy):
-    """The field divided by the size of its gradient, so that it is a distance near its zero.
+def slope_sizes(field, counts, zc, dx, dy):
+    """Size of the field's gradient at every sample, `(nz, ny, nx)` float32; 1 where it is next to nothing.
 
-    The gradient is upwind where fronts meet, as the kink there would move its zero. Only
-    neighbours that `counts` marks, `(nz, ny, nx)` bool, enter.
+    The gradient is upwind where fronts meet. Only neighbours that `counts` marks, bool, enter.
     """
     nz, ny, nx = field.shape
-    out = field.copy()
+    out = np.ones((nz, ny, nx), np.float32)
     for z in prange(nz):
         for y in range(ny):
             for x in range(nx):
                 f = field[z, y, x]
-                x0, x1 = max(x - 1, 0), min(x + 1, nx - 1)
-                y0, y1 = max(y - 1, 0), min(y + 1, ny - 1)
-                z0, z1 = max(z - 1, 0), min(z + 1, nz - 1)
-                low, high = x > 0 and counts[z, y, x0], x + 1 < nx and counts[z, y, x1]
-                gx = _slope_along(field[z, y, x0], f, field[z, y, x1], dx, dx, low, high)
-                low, high = y > 0 and counts[z, y0, x], y + 1 < ny and counts[z, y1, x]
-                gy = _slope_along(field[z, y0, x], f, field[z, y1, x], dy, dy, low, high)
-                low, high = z > 0 and counts[z0, y, x], z + 1 < nz and counts[z1, y, x]
-                gz = _slope_along(field[z0, y, x], f, field[z1, y, x], zc[z] - zc[z0], zc[z1] - zc[z], low, high)
+                x0, x1, y0, y1, z0, z1 = max(x - 1, 0), min(x + 1, nx - 1), max(y - 1, 0), min(y + 1, ny - 1), max(z - 1, 0), min(z + 1, nz - 1)  # fmt: skip
+                gx = _slope_along(field[z, y, x0], f, field[z, y, x1], dx, dx, x > 0 and counts[z, y, x0], x + 1 < nx and counts[z, y, x1])  # fmt: skip
+                gy = _slope_along(field[z, y0, x], f, field[z, y1, x], dy, dy, y > 0 and counts[z, y0, x], y + 1 < ny and counts[z, y1, x])  # fmt: skip
+                gz = _slope_along(field[z0, y, x], f, field[z1, y, x], zc[z] - zc[z0], zc[z1] - zc[z], z > 0 and counts[z0, y, x], z + 1 < nz and counts[z1, y, x])  # fmt: skip
                 norm = np.sqrt(gx * gx + gy * gy + gz * gz)
                 if norm > 0.1:
-                    out[z, y, x] = f / norm
+                    out[z, y, x] = norm
     return out
+
+
+@njit(cache=True, parallel=True)
+def scaled_down(field, size):
+    """The field over `size`; beside its zero over the mean of what the two sides have, so that the zero stays."""
+    nz, ny, nx = field.shape
+    out = np.empty((nz, ny, nx), np.float32)
+    for z in prange(nz):
+        for y in range(ny):
+            for x in range(nx):
+                inside = field[z, y, x] < 0
+                total = size[z, y, x]
+                n = 1
+                for k in range(6):
+                    a = z + (k == 0) - (k == 1)
+                    b = y + (k == 2) - (k == 3)
+                    c = x + (k == 4) - (k == 5)
+                    if 0 <= a < nz and 0 <= b < ny and 0 <= c < nx and (field[a, b, c] < 0) != inside:
+                        total += size[a, b, c]
+                        n += 1
+                out[z, y, x] = field[z, y, x] * n / total
+    return out
+
+
+def normalise(field, counts, zc, dx, dy):
+    """The field made a distance near its zero, which it keeps as far as it can; see `slope_sizes`."""
+    return scaled_down(field, slope_sizes(field, counts, zc, dx, dy))
 
 
 @njit(cache=True, parallel=True)

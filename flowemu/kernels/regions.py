@@ -17,7 +17,7 @@ import numpy as np
 from numba import njit, prange
 
 MAX_INTERVALS = 24
-SLIVER = 2e-4  # shortest interval of an edge that counts, as a share of the edge
+SLIVER = 2e-5  # shortest interval of an edge that counts, as a share of the edge
 CRACK = 0.02  # the same for a void between two solids: thinner ones come of cut corners, not of gaps
 
 # Edges of the division leave a sample towards these neighbours (dz, dy, dx).

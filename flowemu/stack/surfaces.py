@@ -12,7 +12,7 @@ from flowemu.stack.film import BAND, Film
 from flowemu.stack.grid import Grid
 from flowemu.stack.topology import Topology
 
-SAME = 2e-4  # of a cell: a smaller change of the surface is rounding, and the old value stays
+SAME = 2e-5  # of a cell: a smaller change of the surface is rounding, and the old value stays
 
 
 def recut_surface(grid: Grid, films: Sequence[Film], topology: Topology, old: np.ndarray) -> np.ndarray:

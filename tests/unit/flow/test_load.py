@@ -54,7 +54,7 @@ def test_a_fault_of_a_step_names_it(tmp_path: Path) -> None:
         ("over: 20 %", "ovr: 20 %", "14:44: step 3 (etch): unknown setting 'ovr'; did you mean 'over'?"),
         ("flow: Small\n", "", "1:1: missing section 'flow'"),
         ("grid:", "gird:", "10:1: unknown section 'gird'; did you mean 'grid'?"),
-        ("cell: 0.5 um", "cell: 0 um", "10:14: grid.cell: '0 um' is not above zero"),
+        ("cell: 0.5 um", "cell: 0 um", "10:14: grid.cell: '0 um' is below 0.1 nm"),
         ("open: drawn", "open: down", "13:35: step 2 (pattern): open: unknown word 'down'; did you mean 'drawn'?"),
         ("over: 20 %", "over: 20 %, time: 2 min", "14:5: step 3 (etch): expected exactly one of time, depth"),
         ("clears: glass, over", "time: 3 min, over", "14:5: step 3 (etch): 'over' may only follow clears or until"),
