@@ -32,7 +32,8 @@ def coat(stack: FilmStack, film: Film, thickness: float, coverage: float = 1.0) 
     if coverage < 1.0:
         top = kernel.normalise(top.astype(np.float32), open_space, grid.z, grid.cell, grid.cell)
         top = redistance(top, grid.cell, grid.cell, grid.z, stack.band)
-        top = np.minimum(top, surface - np.float32(0.5 * thickness * coverage))  # nowhere thinner than half of a wall's
+        thinnest = np.where(surface < stack.band, surface - np.float32(0.5 * thickness * coverage), np.float32(np.inf))
+        top = np.minimum(top, thinnest)
     if thickness * coverage < grid.cell:
         top = _over_corners(stack, top, open_space, 0.5 * thickness * coverage)
     return _laid(stack, film, np.minimum(top, surface), open_space)
