@@ -18,6 +18,7 @@ from numba import njit, prange
 
 MAX_INTERVALS = 24
 SLIVER = 2e-5  # shortest interval of an edge that counts, as a share of the edge
+SAME_FACE = 2e-3  # of a sample's spacing: two distances no farther apart are those of one face
 CRACK = 0.02  # the same for a void between two solids: thinner ones come of cut corners, not of gaps
 
 # Edges of the division leave a sample towards these neighbours (dz, dy, dx).
@@ -62,6 +63,46 @@ def code_of(values, ti, bi, gi):
 
 
 @njit(cache=True)
+def _laid_on(v, reach, k, j, ti, bi, gi):
+    """Whether film k was laid on a face of film j that still is the one nearest to a sample in j, of values v."""
+    if bi[k] < 0 or v[bi[k]] >= 0:
+        return False
+    depth = v[bi[k]]
+    limit = SAME_FACE * reach
+    if abs(v[ti[j]] - depth) < limit:
+        return True
+    return (gi[j] >= 0 and abs(v[gi[j]] - depth) < limit) or (bi[j] >= 0 and abs(v[bi[j]] + depth) < limit)
+
+
+@njit(cache=True)
+def _bedded(va, vb, ti, bi, gi, code_out, end_out, m):
+    """Close the voids between a film and what it was laid on.
+
+    In a concave corner the floor of a film, one interpolated distance, runs clear of the faces that it
+    stands for, by up to half a sample.
+    """
+    if m < 3:
+        return m
+    k = -1 - code_out[1]
+    if code_out[0] >= 0 and 0 < k == code_out[2]:
+        if _laid_on(va, abs(vb[bi[k]] - va[bi[k]]), k, code_out[0], ti, bi, gi):
+            for r in range(1, m - 1):
+                code_out[r] = code_out[r + 1]
+                end_out[r] = end_out[r + 1]
+            m -= 1
+    if m < 3:
+        return m
+    k = -1 - code_out[m - 2]
+    if code_out[m - 1] >= 0 and 0 < k == code_out[m - 3]:
+        if _laid_on(vb, abs(vb[bi[k]] - va[bi[k]]), k, code_out[m - 1], ti, bi, gi):
+            end_out[m - 3] = end_out[m - 2]
+            code_out[m - 2] = code_out[m - 1]
+            end_out[m - 2] = end_out[m - 1]
+            m -= 1
+    return m
+
+
+@njit(cache=True)
 def _closed(code_out, end_out, m):
     """Close the cracks of a partition: voids between two solids thinner than `CRACK`."""
     q = 1
@@ -88,7 +129,7 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
 
     Writes the codes and the intervals' upper ends (share of the edge, the last is 1) and returns
     their number; intervals shorter than `SLIVER` are dropped. The first and the last always have the
-    codes of the samples at the ends: a crossing at a sample is moved off it by two slivers.
+    codes of the samples at the ends, however short.
     """
     cuts = np.empty(MAX_INTERVALS, np.float64)
     n = 0
@@ -96,7 +137,7 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
         a = va[f]
         b = vb[f]
         if (a < 0) != (b < 0) and n < MAX_INTERVALS - 1:
-            c = min(max(a / (a - b), 2 * SLIVER), 1 - 2 * SLIVER)
+            c = a / (a - b)
             j = n
             while j > 0 and cuts[j - 1] > c:
                 cuts[j] = cuts[j - 1]
@@ -108,7 +149,7 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
     m = 0
     for j in range(n + 1):
         high = cuts[j] if j < n else 1.0
-        if high - low < SLIVER and n > 0:
+        if high - low < SLIVER and 0 < j < n:  # the ends stand for their samples, however short they are
             continue
         if j == 0:
             code = code_of(va, ti, bi, gi)
@@ -127,7 +168,7 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
             m += 1
         low = high
     end_out[m - 1] = 1.0
-    return _closed(code_out, end_out, m)
+    return _closed(code_out, end_out, _bedded(va, vb, ti, bi, gi, code_out, end_out, m))
 
 
 @njit(cache=True, parallel=True)
