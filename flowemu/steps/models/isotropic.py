@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from flowemu.kernels import faces as bare_faces
 from flowemu.kernels import fronts, starts, surface
 from flowemu.kernels.march import arrival_on_graph
 from flowemu.kernels.regions import STEP_OF_BITS
@@ -210,12 +211,12 @@ class Faces:
             grid.cell,
         )  # fmt: skip
         nothing = np.zeros(1, np.int64), np.empty((0, 3, 3)), np.empty(0, np.int16)
-        number, partly = starts.bare_triangles(*given, *nothing)
+        number, partly = bare_faces.bare_triangles(*given, *nothing)
         first = np.zeros(len(t.cells) + 1, np.int64)
         np.cumsum(number, out=first[1:])
         triangles, films = np.empty((first[-1], 3, 3)), np.empty(first[-1], np.int16)
         if len(films):
-            starts.bare_triangles(*given, first, triangles, films)
+            bare_faces.bare_triangles(*given, first, triangles, films)
         return cls(triangles, films, np.repeat(np.arange(len(t.cells)), number), first, number, partly)
 
 
