@@ -75,7 +75,10 @@ def eaten_nitride(done: Done) -> float:
 
 
 def test_the_short_release_is_the_one_error_and_says_what_is_left_where_and_for_how_long(ran: Ran) -> None:
-    """By hand: HF needs 7.6 um at 3.6 um/min, 127 s, and has 100 s; what is left is at radii of 9 to 12 um."""
+    """By hand: HF has 100 s of the 127 s that 7.6 um at 3.6 um/min take; the last is left at radii of 9 to 12 um.
+
+    Behind a dimple and beside a spoke the way is longer by up to the dimple's radius of 1.25 um, 20 s.
+    """
     done = ran("rotor_short_release")
     assert done.status == 1, done.err
     (error,) = done.found("error")
@@ -85,7 +88,7 @@ def test_the_short_release_is_the_one_error_and_says_what_is_left_where_and_for_
     assert 0.6 <= z <= 2.6
     left = re.search(r"([0-9.]+) s more are needed", error["text"])
     assert left is not None
-    assert float(left.group(1)) == pytest.approx(127.0 - 100.0, abs=15.0)
+    assert 25.0 <= float(left.group(1)) <= 47.0
     assert {part["name"]: part["state"] for part in done.result["parts"]}["rotor"] == "held"
 
 

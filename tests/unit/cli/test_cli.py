@@ -145,7 +145,7 @@ def test_lengths_on_the_command_line_are_um_unless_they_say_otherwise() -> None:
     assert Lengths(2).convert("1,-2.5", None, None) == (1.0, -2.5)
     assert Lengths(2).convert("1 mm, 500 nm", None, None) == (1000.0, 0.5)
     assert CellSize().convert("0.5um", None, None) == 0.5
-    with pytest.raises(click.BadParameter, match="is below 0.1 nm"):
+    with pytest.raises(click.BadParameter, match=r"is below 0\.1 nm"):
         CellSize().convert("0 um", None, None)
 
 
