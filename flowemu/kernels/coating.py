@@ -68,10 +68,16 @@ def slope_sizes(field, counts, zc, dx, dy):
         for y in range(ny):
             for x in range(nx):
                 f = field[z, y, x]
-                x0, x1, y0, y1, z0, z1 = max(x - 1, 0), min(x + 1, nx - 1), max(y - 1, 0), min(y + 1, ny - 1), max(z - 1, 0), min(z + 1, nz - 1)  # fmt: skip
-                gx = _slope_along(field[z, y, x0], f, field[z, y, x1], dx, dx, x > 0 and counts[z, y, x0], x + 1 < nx and counts[z, y, x1])  # fmt: skip
-                gy = _slope_along(field[z, y0, x], f, field[z, y1, x], dy, dy, y > 0 and counts[z, y0, x], y + 1 < ny and counts[z, y1, x])  # fmt: skip
-                gz = _slope_along(field[z0, y, x], f, field[z1, y, x], zc[z] - zc[z0], zc[z1] - zc[z], z > 0 and counts[z0, y, x], z + 1 < nz and counts[z1, y, x])  # fmt: skip
+                x0, x1 = max(x - 1, 0), min(x + 1, nx - 1)
+                y0, y1 = max(y - 1, 0), min(y + 1, ny - 1)
+                z0, z1 = max(z - 1, 0), min(z + 1, nz - 1)
+                has_x0, has_x1 = x > 0 and counts[z, y, x0], x + 1 < nx and counts[z, y, x1]
+                has_y0, has_y1 = y > 0 and counts[z, y0, x], y + 1 < ny and counts[z, y1, x]
+                has_z0, has_z1 = z > 0 and counts[z0, y, x], z + 1 < nz and counts[z1, y, x]
+                gx = _slope_along(field[z, y, x0], f, field[z, y, x1], dx, dx, has_x0, has_x1)
+                gy = _slope_along(field[z, y0, x], f, field[z, y1, x], dy, dy, has_y0, has_y1)
+                low, high = zc[z] - zc[z0], zc[z1] - zc[z]
+                gz = _slope_along(field[z0, y, x], f, field[z1, y, x], low, high, has_z0, has_z1)
                 norm = np.sqrt(gx * gx + gy * gy + gz * gz)
                 if norm > 0.1:
                     out[z, y, x] = norm
