@@ -22,7 +22,6 @@ from flowemu.flow.process import ProcessDataError, load_process_data
 from flowemu.layout import Layout, MissingCell, read_layout
 from flowemu.record import FilmRow, FreeRow, RunRecord, Shot, StepRow
 from flowemu.stack.bodies import Place
-from flowemu.stack.film import Film
 from flowemu.stack.grid import Grid
 from flowemu.stack.measure import film_volume
 from flowemu.stack.stack import FilmStack
@@ -48,25 +47,13 @@ class Run:
     record: RunRecord
 
 
-class Volumes:
-    """Volumes of films, each measured once."""
-
-    def __init__(self, grid: Grid) -> None:
-        self.grid = grid
-        self.known: dict[int, tuple[Film, float]] = {}
-
-    def of(self, film: Film) -> float:
-        if id(film) not in self.known:
-            self.known[id(film)] = (film, film_volume(film, self.grid))
-        return self.known[id(film)][1]
-
-    def change(self, before: FilmStack, after: FilmStack) -> tuple[float, float]:
-        """Volume removed and volume added between two stacks, um3."""
-        old = {(f.name, f.step): self.of(f) for f in before.films}
-        new = {(f.name, f.step): self.of(f) for f in after.films}
-        removed = sum(max(volume - new.get(key, 0.0), 0.0) for key, volume in old.items())
-        added = sum(max(volume - old.get(key, 0.0), 0.0) for key, volume in new.items())
-        return removed, added
+def volume_change(before: FilmStack, after: FilmStack) -> tuple[float, float]:
+    """Volume removed and volume added between two stacks, um3."""
+    old = {(f.name, f.step): film_volume(f, before.grid) for f in before.films}
+    new = {(f.name, f.step): film_volume(f, after.grid) for f in after.films}
+    removed = sum(max(volume - new.get(key, 0.0), 0.0) for key, volume in old.items())
+    added = sum(max(volume - old.get(key, 0.0), 0.0) for key, volume in new.items())
+    return removed, added
 
 
 def run_flow(
@@ -104,7 +91,6 @@ def run_flow(
     tools = Tools(flow, tools.data, layout, tools.places, grid)
     last = len(flow.steps) if until is None else until
     wafer = Wafer(FilmStack.bare(grid, *_wafer_material(flow, tools)))
-    volumes = Volumes(grid)
     rows, shots, findings = [], [], []
     if 0 in keep and last > 0:
         shots.append(Shot(0, "the bare wafer", wafer.stack))
@@ -112,7 +98,7 @@ def run_flow(
         progress(step.index - 1, last, step.title)
         before = wafer
         wafer = _apply(flow, step, wafer, tools)
-        rows.append(_step_row(step, before, wafer, volumes))
+        rows.append(_step_row(step, before, wafer))
         if step.index < last and (step.index in keep or step.verb == "inspect"):
             shots.append(Shot(step.index, step.title, wafer.stack))
         if step.verb == "inspect" and checks and step.index < last:
@@ -133,7 +119,7 @@ def run_flow(
         masks_sha256=_masks_hash(flow, layout),
         grid=grid,
         steps=tuple(rows),
-        films=tuple(FilmRow(f.name, f.material, f.step, volumes.of(f)) for f in wafer.stack.films),
+        films=tuple(FilmRow(f.name, f.material, f.step, film_volume(f, grid)) for f in wafer.stack.films),
         parts=parts,
         findings=tuple(findings),
         shots=tuple(shots),
@@ -196,8 +182,8 @@ def _setting_of(text: str, settings: Any) -> str | None:
     return None
 
 
-def _step_row(step: Step, before: Wafer, after: Wafer, volumes: Volumes) -> StepRow:
-    removed, added = volumes.change(before.stack, after.stack)
+def _step_row(step: Step, before: Wafer, after: Wafer) -> StepRow:
+    removed, added = volume_change(before.stack, after.stack)
     cuts = [event for event in after.events if isinstance(event, Cut) and event.step == step.index]
     seconds = cuts[0].time if cuts and cuts[0].time > 0 else None
     return StepRow(step.index, step.verb, step.name, seconds, removed, added)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-from numba import njit, prange
+from numba import njit
 
 
 @njit(cache=True)
@@ -59,26 +59,61 @@ def _trilinear(field, z, y, x, wz, wy, wx, z1, y1, x1):
     return low * (1 - wz) + high * wz
 
 
-@njit(cache=True, parallel=True)
+@njit(cache=True)
+def film_boxes(samples, code, count, start, interval_code, strides, films):
+    """Where each film is, in sample numbers: `(films, 6)` int64, least and greatest x, y, z, a sample to spare."""
+    nz, ny, nx = code.shape
+    flat = code.reshape(-1)
+    box = np.empty((films, 6), np.int64)
+    box[:, ::2] = flat.size
+    box[:, 1::2] = -2
+    for z in range(nz):
+        for y in range(ny):
+            for x in range(nx):
+                if code[z, y, x] >= 0:
+                    _widen(box, code[z, y, x], x, y, z)
+    for s in range(samples.size):
+        for d in range(7):
+            for q in range(1, np.int64(count[s, d]) - 1):
+                k = interval_code[start[s * 7 + d] + q]
+                if k >= 0:
+                    for i in (samples[s], samples[s] + strides[d]):
+                        _widen(box, k, i % nx, (i // nx) % ny, i // (ny * nx))
+    return box
+
+
+@njit(cache=True)
+def _widen(box, k, x, y, z):
+    """Take a sample into film k's box."""
+    box[k, 0], box[k, 1] = min(box[k, 0], x - 1), max(box[k, 1], x + 1)
+    box[k, 2], box[k, 3] = min(box[k, 2], y - 1), max(box[k, 3], y + 1)
+    box[k, 4], box[k, 5] = min(box[k, 4], z - 1), max(box[k, 5], z + 1)
+
+
+@njit(cache=True)
 def film_depth(
-    depth, points, top, floor, gone, has_floor, has_gone, film, shared, code, piece, pieces, x0, y0, cell, zc
+    depth, points, top, floor, gone, has_floor, has_gone, film, box, shared, code, piece, pieces, x0, y0, cell, zc
 ):
     """Raise `depth (m,)` at each point to how deep it lies in one film of the rest, um.
 
-    Where the film is `shared` with the body itself, a point counts only if a sample of the film beside
-    it belongs to another piece. Points outside the window's sides are carried in, as in a mirror.
+    `box (6,)` is the film's of `film_boxes`. Where the film is `shared` with the body itself, a point counts
+    only if a sample of the film beside it belongs to another piece. Points outside the window's sides are carried
+    in, as in a mirror.
     """
     nz, ny, nx = top.shape
     wide_y, wide_x = code.shape[1], code.shape[2]
-    for k in prange(points.shape[0]):
-        fx = (points[k, 0] - x0) / cell
-        fy = (points[k, 1] - y0) / cell
+    low, high = zc[min(max(box[4], 0), nz - 1)], zc[min(max(box[5], 0), nz - 1)]
+    for k in range(points.shape[0]):
         if points[k, 2] >= zc[nz - 1] or points[k, 2] <= zc[0]:
             if points[k, 2] <= zc[0] and film == 0:
                 depth[k] = max(depth[k], cell)
             continue
-        fx = min(max(fx, 0.0), nx - 1.0)
-        fy = min(max(fy, 0.0), ny - 1.0)
+        if points[k, 2] < low or points[k, 2] > high:
+            continue
+        fx = min(max((points[k, 0] - x0) / cell, 0.0), nx - 1.0)
+        fy = min(max((points[k, 1] - y0) / cell, 0.0), ny - 1.0)
+        if fx < box[0] or fx > box[1] or fy < box[2] or fy > box[3]:
+            continue
         x = min(int(fx), max(nx - 2, 0))
         y = min(int(fy), max(ny - 2, 0))
         z = min(max(np.searchsorted(zc, points[k, 2]) - 1, 0), nz - 2)

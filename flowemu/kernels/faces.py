@@ -1,169 +1,56 @@
-"""Bare faces of films: the triangles of their surfaces that an etchant comes from.
+"""Where films lie bare to an etchant: triangles of their surfaces, cell by cell.
 
-The grid's cells are cut into tetrahedra (see `kernels.regions`) on which every field is linear, so a
-film's surface there is a flat piece; where another film covers part of it, it is halved until the bare
-part is told to an eighth of a cell.
+A face is part of the surface of one field inside a tetrahedron of a mixed cell (see `kernels.regions`). It is cut along
+the surfaces of the other fields, so that each piece is bare or covered as a whole. Threads call the compiled loop,
+which lets go of the interpreter's lock, on runs of cells: as a parallel kernel it takes twice as long to compile.
+
+`cut` lists the fields that change sign inside a cell, `negative (fields,)` the signs of all others there. `source`,
+`(2 w + 1,)` uint8, is 1 at `code + w` for the codes that the etchant comes from.
 """
 
 from __future__ import annotations
 
+from concurrent.futures import ThreadPoolExecutor
+
 import numpy as np
-from numba import njit, prange
+from numba import get_num_threads, njit
 
 TETRAHEDRA = np.array(
     [(0, 1, 3, 7), (0, 1, 5, 7), (0, 2, 3, 7), (0, 2, 6, 7), (0, 4, 5, 7), (0, 4, 6, 7)], dtype=np.int64
 )
+STEP_OF_BITS = np.array([-1, 0, 1, 3, 2, 4, 5, 6], dtype=np.int64)
 NUDGE = 0.01  # how far, as a share of a cell, either side of a face is looked at
-DEPTH = 3  # times a face is halved where it is partly covered
-STACK = 32
+THIN = 1e-3  # of a cell: two surfaces that lie closer than this are one
+PIECES = 24  # that a face may be cut into
+CORNERS = 16  # of one piece
+MOST = 600  # triangles of one film in one cell
+RUN = 4096  # cells that a thread takes at a time
 
 
 @njit(cache=True)
-def _code_of(values, ti, bi, gi):
-    roof = 0
-    for k in range(ti.size):
-        if values[ti[k]] < 0:
-            if bi[k] < 0 or values[bi[k]] >= 0:
-                if gi[k] < 0 or values[gi[k]] < 0:
-                    return k
-                roof = 0
-            elif roof == 0:
-                roof = k
-    return -1 - roof
+def _present(base, corner_offsets, row_of, code, count, start, interval_code, present):
+    """Mark in `present` the films that reach into a cell (as corner or inside an edge)."""
+    present[:] = 0
+    for a in range(8):
+        i = base + corner_offsets[a]
+        if code[i] >= 0:
+            present[code[i]] = 1
+        s = row_of[i]
+        for b in range(a + 1, 8):
+            if (a & b) == a:
+                d = STEP_OF_BITS[b - a]
+                at = start[s * 7 + d]
+                for q in range(1, np.int64(count[s, d]) - 1):
+                    if interval_code[at + q] >= 0:
+                        present[interval_code[at + q]] = 1
 
 
 @njit(cache=True)
-def _face(f, vals, points, out_points, out_values):
-    """Corners (at most 4) of the surface of field f in a tetrahedron, in order round it."""
-    m = 0
-    odd = False
-    for a in range(4):
-        if vals[a, f] >= 0:
-            continue
-        for k in range(4):
-            b = 3 - k if odd else k
-            if vals[b, f] < 0:
-                continue
-            s = vals[a, f] / (vals[a, f] - vals[b, f])
-            for g in range(vals.shape[1]):
-                out_values[m, g] = vals[a, g] + s * (vals[b, g] - vals[a, g])
-            for g in range(3):
-                out_points[m, g] = points[a, g] + s * (points[b, g] - points[a, g])
-            m += 1
-        odd = not odd
-    return m
-
-
-@njit(cache=True)
-def _classes(v, mean_in, mean_out, ti, bi, gi, work):
-    """Codes just inside and just outside a face at a point with field values v."""
-    for g in range(v.size):
-        work[g] = v[g] + NUDGE * (mean_in[g] - v[g])
-    inner = _code_of(work, ti, bi, gi)
-    for g in range(v.size):
-        work[g] = v[g] + NUDGE * (mean_out[g] - v[g])
-    return inner, _code_of(work, ti, bi, gi)
-
-
-@njit(cache=True)
-def _cut_triangle(corner, value, mean_in, mean_out, film, source, ti, bi, gi, scratch, out, n):
-    """Append to `out` the bare part of one triangle (rows 0..2); returns (count, some of it is covered).
-
-    `scratch` is (points, values, levels, mixed, work): a stack of triangles still to be looked at.
-    """
-    points, values, level, mixed, work = scratch
-    offset = source.size // 2
-    points[0] = corner
-    values[0] = value
-    level[0] = 0
-    left = 1
-    covered = False
-    while left > 0:
-        left -= 1
-        q = left
-        bare = 0
-        first_bare = -1
-        for g in range(3):
-            for f in range(mixed.size):
-                mixed[f] = values[q, g, f] * 0.98 + (values[q, 0, f] + values[q, 1, f] + values[q, 2, f]) * (0.02 / 3)
-            inner, outer = _classes(mixed, mean_in, mean_out, ti, bi, gi, work)
-            if inner == film and source[outer + offset] != 0:
-                bare += 1
-                first_bare = g
-            elif inner == film:
-                covered = True
-        for f in range(mixed.size):
-            mixed[f] = (values[q, 0, f] + values[q, 1, f] + values[q, 2, f]) / 3
-        inner, outer = _classes(mixed, mean_in, mean_out, ti, bi, gi, work)
-        middle = inner == film and source[outer + offset] != 0
-        if (bare == 3 and middle) or (level[q] == DEPTH and middle):
-            if n < out.shape[0]:
-                out[n] = points[q]
-                n += 1
-        elif level[q] == DEPTH:
-            if bare > 0 and n < out.shape[0]:  # too small to cut further: a bare corner stands for it
-                out[n, 0] = points[q, first_bare]
-                out[n, 1] = points[q, first_bare]
-                out[n, 2] = points[q, first_bare]
-                n += 1
-        elif bare > 0 or middle:
-            a = points[q].copy()
-            b = values[q].copy()
-            deeper = level[q] + 1
-            for k in range(4):
-                for g in range(3):
-                    h = (g + 1) % 3
-                    for i in range(3):
-                        points[left, g, i] = 0.5 * (a[g, i] + a[h, i]) if k == 3 else 0.5 * (a[k, i] + a[g, i])
-                    for i in range(b.shape[1]):
-                        values[left, g, i] = 0.5 * (b[g, i] + b[h, i]) if k == 3 else 0.5 * (b[k, i] + b[g, i])
-                level[left] = deeper
-                left += 1
-    return n, covered
-
-
-@njit(cache=True)
-def _tetra_triangles(vals, points, f, film, on_floor, plain, source, ti, bi, gi, face, scratch, out, n):
-    """Append the bare triangles of field f's surface in a tetrahedron; see `_cut_triangle`."""
-    corner, value, mean_in, mean_out, tri_p, tri_v = face
-    m = _face(f, vals, points, corner, value)
-    if m < 3:
-        return n, False
-    if plain:
-        for t in range(m - 2):
-            if n < out.shape[0]:
-                out[n, 0] = corner[0]
-                out[n, 1] = corner[t + 1]
-                out[n, 2] = corner[t + 2]
-                n += 1
-        return n, False
-    below = 0
-    mean_in[:] = 0
-    mean_out[:] = 0
-    for a in range(4):
-        if (vals[a, f] < 0) != on_floor:
-            mean_in += vals[a]
-            below += 1
-        else:
-            mean_out += vals[a]
-    mean_in /= below
-    mean_out /= 4 - below
-    covered = False
-    for t in range(m - 2):
-        for g in range(3):
-            q = 0 if g == 0 else t + g
-            tri_p[g] = corner[q]
-            tri_v[g] = value[q]
-        n, more = _cut_triangle(tri_p, tri_v, mean_in, mean_out, film, source, ti, bi, gi, scratch, out, n)
-        covered |= more
-    return n, covered
-
-
-@njit(cache=True)
-def _open_codes(base, corner_offsets, row_of, code, count, start, interval_code, step_of_bits, is_open, piece, mark):
-    """Mark in `mark` (by code + half its size) the codes of the open voids that reach into a cell."""
+def _open_codes(base, corner_offsets, row_of, code, count, start, interval_code, is_open, piece, mark):
+    """Mark in `mark` (by code + half its size) the codes of the open voids in a cell; whether there is any."""
     n = code.size
     offset = mark.size // 2
+    mark[:] = 0
     found = False
     for a in range(8):
         i = base + corner_offsets[a]
@@ -173,7 +60,7 @@ def _open_codes(base, corner_offsets, row_of, code, count, start, interval_code,
         s = row_of[i]
         for b in range(a + 1, 8):
             if (a & b) == a:
-                d = step_of_bits[b - a]
+                d = STEP_OF_BITS[b - a]
                 at = start[s * 7 + d]
                 for q in range(1, np.int64(count[s, d]) - 1):
                     c = interval_code[at + q]
@@ -184,104 +71,340 @@ def _open_codes(base, corner_offsets, row_of, code, count, start, interval_code,
 
 
 @njit(cache=True)
-def _present(base, corner_offsets, row_of, code, count, start, interval_code, step_of_bits, present):
-    """Mark in `present` the films that reach into a cell (as corner or inside an edge)."""
-    present[:] = 0
-    for a in range(8):
-        i = base + corner_offsets[a]
-        if code[i] >= 0:
-            present[code[i]] = 1
-        s = row_of[i]
-        for b in range(a + 1, 8):
-            if (a & b) == a:
-                d = step_of_bits[b - a]
-                at = start[s * 7 + d]
-                for q in range(1, np.int64(count[s, d]) - 1):
-                    if interval_code[at + q] >= 0:
-                        present[interval_code[at + q]] = 1
+def _cell_values(base, corner_offsets, row_of, values, negative, cut, corner_values):
+    """Gather the values at a cell's corners, `(8, fields)`; returns the number of fields listed in `cut`."""
+    nc = 0
+    for f in range(values.shape[1]):
+        below = 0
+        for a in range(8):
+            v = values[row_of[base + corner_offsets[a]], f]
+            corner_values[a, nc] = v
+            below += v < 0
+        negative[f] = below == 8
+        if 0 < below < 8:
+            cut[nc] = f
+            nc += 1
+    return nc
 
 
-@njit(cache=True, parallel=True)
-def bare_triangles(
-    cells, corner_offsets, step_of_bits, shape, row_of, values, code, count, start, interval_code, ti, bi, gi,
-    stage, source, is_open, piece, zc, dx, dy, first, triangles, films_of,
+@njit(cache=True)
+def _code_here(negative, ti, bi, gi):
+    """The code of a point from the signs of its fields; see `regions.code_of`."""
+    roof = 0
+    for k in range(ti.size):
+        if negative[ti[k]]:
+            if bi[k] < 0 or not negative[bi[k]]:
+                if gi[k] < 0 or negative[gi[k]]:
+                    return k
+                roof = 0
+            elif roof == 0:
+                roof = k
+    return -1 - roof
+
+
+@njit(cache=True)
+def _code_beside(value, mean, cut, nc, negative, ti, bi, gi):
+    """Code a little way from a point of a face towards `mean`."""
+    for c in range(nc):
+        negative[cut[c]] = value[c] + NUDGE * (mean[c] - value[c]) < 0
+    return _code_here(negative, ti, bi, gi)
+
+
+@njit(cache=True)
+def _face(c, vals, points, nc, corner, value):
+    """Corners (at most 4) of the surface of the cell's cut field c in a tetrahedron, in order round it."""
+    m = 0
+    inside = 0
+    for p in range(4):
+        if vals[p, c] >= 0:
+            continue
+        for q0 in range(4):
+            q = q0 if inside % 2 == 0 else 3 - q0
+            if vals[q, c] < 0:
+                continue
+            s = vals[p, c] / (vals[p, c] - vals[q, c])
+            for g in range(nc):
+                value[m, g] = vals[p, g] + s * (vals[q, g] - vals[p, g])
+            for g in range(3):
+                corner[m, g] = points[p, g] + s * (points[q, g] - points[p, g])
+            m += 1
+        inside += 1
+    return m
+
+
+@njit(cache=True)
+def _means(c, vals, nc, swapped, mean_in, mean_out):
+    """Mean values at the corners within and beyond a face; swapped where the film is on its positive side."""
+    n_in = 0
+    for a in range(4):
+        n_in += vals[a, c] < 0
+    for g in range(nc):
+        total_in = 0.0
+        total_out = 0.0
+        for a in range(4):
+            if vals[a, c] < 0:
+                total_in += vals[a, g]
+            else:
+                total_out += vals[a, g]
+        total_in /= n_in
+        total_out /= 4 - n_in
+        mean_in[g] = total_out if swapped else total_in
+        mean_out[g] = total_in if swapped else total_out
+
+
+@njit(cache=True)
+def _one_sided(m, value, mean_in, mean_out, nc):
+    """Whether every field has one sign just within the whole face and one just beyond it."""
+    for g in range(nc):
+        a = value[0, g] + NUDGE * (mean_in[g] - value[0, g]) < 0
+        b = value[0, g] + NUDGE * (mean_out[g] - value[0, g]) < 0
+        for k in range(1, m):
+            if (value[k, g] + NUDGE * (mean_in[g] - value[k, g]) < 0) != a:
+                return False
+            if (value[k, g] + NUDGE * (mean_out[g] - value[k, g]) < 0) != b:
+                return False
+    return True
+
+
+@njit(cache=True)
+def _bare(value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi):
+    """2 if `film` lies bare to the source at a point of its face, 1 if it is covered there, 0 if it is not there."""
+    if _code_beside(value, mean_in, cut, nc, negative, ti, bi, gi) != film:
+        return 0
+    outer = _code_beside(value, mean_out, cut, nc, negative, ti, bi, gi)
+    return 2 if source[outer + source.size // 2] != 0 else 1
+
+
+@njit(cache=True)
+def _add_triangle(tri, n, points, a, b, c):
+    """Add the triangle of three of the points, if there is room; returns the number of triangles."""
+    if n == tri.shape[0]:
+        return n
+    for g in range(3):
+        tri[n, 0, g] = points[a, g]
+        tri[n, 1, g] = points[b, g]
+        tri[n, 2, g] = points[c, g]
+    return n + 1
+
+
+@njit(cache=True)
+def _split(poly, size, k, new, g):
+    """Split convex polygon k where its column g is zero: the negative side stays, the other becomes polygon `new`."""
+    n = size[k]
+    for i in range(n):
+        for h in range(poly.shape[2]):
+            poly[-1, i, h] = poly[k, i, h]
+    size[k] = 0
+    size[new] = 0
+    for i in range(n):
+        j = i + 1 if i + 1 < n else 0
+        a, b = poly[-1, i, g], poly[-1, j, g]
+        side = k if a < 0 else new
+        for h in range(poly.shape[2]):
+            poly[side, size[side], h] = poly[-1, i, h]
+        size[side] += 1
+        if (a < 0) != (b < 0):
+            s = a / (a - b)
+            for h in range(poly.shape[2]):
+                v = poly[-1, i, h] + s * (poly[-1, j, h] - poly[-1, i, h])
+                poly[k, size[k], h] = v
+                poly[new, size[new], h] = v
+            size[k] += 1
+            size[new] += 1
+
+
+@njit(cache=True)
+def _cut_up(c, m, corner, value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi, tri, n, thin):
+    """Cut a face along the other fields' surfaces and add its bare pieces.
+
+    A piece nowhere deeper than `thin` um beyond a surface is not cut off. Returns the number of triangles.
+    """
+    poly = np.empty((PIECES + 1, CORNERS, 3 + nc), np.float64)
+    size = np.zeros(PIECES + 1, np.int64)
+    size[0] = m
+    for i in range(m):
+        for h in range(3):
+            poly[0, i, h] = corner[i, h]
+        for h in range(nc):
+            poly[0, i, 3 + h] = value[i, h]
+    pieces = 1
+    for g in range(nc):
+        for k in range(pieces):
+            low = high = 0.0
+            for i in range(size[k]):
+                low = min(low, poly[k, i, 3 + g])
+                high = max(high, poly[k, i, 3 + g])
+            if g != c and low < -thin and high > thin and pieces < PIECES and size[k] < CORNERS - 1:
+                _split(poly, size, k, pieces, 3 + g)
+                pieces += 1
+    w = np.empty(nc, np.float64)
+    for k in range(pieces):
+        for h in range(nc):
+            w[h] = 0.0
+            for i in range(size[k]):
+                w[h] += poly[k, i, 3 + h] / size[k]
+        if _bare(w, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi) == 2:
+            for i in range(size[k] - 2):
+                n = _add_triangle(tri, n, poly[k], 0, i + 1, i + 2)
+    return n
+
+
+@njit(cache=True)
+def bare_faces(
+    c, swapped, vals, points, film, source, cut, nc, negative, ti, bi, gi, tri, n, thin, corner, value, mean_in,
+    mean_out,
 ):  # fmt: skip
-    """The bare triangles of staged films in every mixed cell.
+    """Add to `tri (most, 3, 3)` the triangles of one field's surface in a tetrahedron where `film` is bare.
 
-    The etchant comes from the films that `source` marks (by code + half its size); where none is
-    marked, from the voids whose roots `is_open` marks. With `triangles` empty only their numbers are
-    counted; else they are written, cell after cell from `first`, with their films.
+    Parameters
+    ----------
+    c : place of the field in `cut`
+    swapped : whether the film is on the field's positive side
+    vals, points : (4, fields) and (4, 3), values of the fields in `cut`, and places of the corners
+    source : (2 w + 1,) uint8; 1 at `code + w` for the codes that the etchant comes from
+    negative : (fields,) bool; the signs of the fields that are not cut
+    n : number of triangles so far
+    thin : um; two surfaces that lie closer than this are one
+    corner, value, mean_in, mean_out : (4, 3), (4, fields), (fields,), (fields,) scratch
 
     Returns
     -------
-    number : (cells,) int32
-    partly : (cells,) uint8, where a face of a film ends under a cover
+    n : int
+    ends : whether the bare part may end in the face
     """
+    m = _face(c, vals, points, nc, corner, value)
+    _means(c, vals, nc, swapped, mean_in, mean_out)
+    if not _one_sided(m, value, mean_in, mean_out, nc):
+        n = _cut_up(c, m, corner, value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi, tri, n, thin)
+        return n, True
+    state = _bare(value[0], mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi)
+    if state == 2:
+        for t in range(m - 3, -1, -1):
+            n = _add_triangle(tri, n, corner, 0, t + 1, t + 2)
+    return n, state == 1
+
+
+@njit(cache=True)
+def _place_of(f, cut, nc):
+    """Place of a field in `cut`, or -1."""
+    for c in range(nc):
+        if cut[c] == f:
+            return c
+    return -1
+
+
+@njit(cache=True)
+def _film_triangles(
+    film, bx, by, bz, corner_values, cut, nc, negative, here, ti, bi, gi, zc, dx, dy, tri, n, vals, points, corner,
+    value, mean_in, mean_out,
+):  # fmt: skip
+    """Add the bare triangles of one film in a cell; returns their number, and whether its bare surface may end here."""
+    partly = False
+    faces = (_place_of(ti[film], cut, nc), _place_of(bi[film], cut, nc), _place_of(gi[film], cut, nc))
+    if max(faces) < 0:
+        return n, partly
+    for t in range(6):
+        for a in range(4):
+            o = TETRAHEDRA[t, a]
+            for g in range(nc):
+                vals[a, g] = corner_values[o, g]
+            points[a, 0] = (bx + (o & 1)) * dx
+            points[a, 1] = (by + ((o >> 1) & 1)) * dy
+            points[a, 2] = zc[bz + (o >> 2)]
+        for face in range(3):
+            c = faces[face]
+            if c < 0:
+                continue
+            below = int(vals[0, c] < 0) + int(vals[1, c] < 0) + int(vals[2, c] < 0) + int(vals[3, c] < 0)
+            if 0 < below < 4:
+                n, ends = bare_faces(
+                    c, face == 1, vals, points, film, here, cut, nc, negative, ti, bi, gi, tri, n, THIN * dx, corner,
+                    value, mean_in, mean_out,
+                )  # fmt: skip
+                partly |= ends
+    return n, partly
+
+
+@njit(cache=True, nogil=True)
+def _triangles_in(
+    cells, corner_offsets, shape, row_of, values, code, count, start, interval_code, ti, bi, gi, stage, source, is_open,
+    piece, zc, dx, dy,
+):  # fmt: skip
+    """`bare_triangles` of some cells."""
     _, ny, nx = shape
     films = stage.size
     nf = values.shape[1]
     number = np.zeros(cells.size, np.int32)
     partly = np.zeros(cells.size, np.uint8)
-    fill = triangles.shape[0] > 0
+    present = np.empty(films, np.int64)
+    here = source.copy()
     from_void = not source.any()
-    for c in prange(cells.size):
-        if fill and first[c + 1] == first[c]:
-            continue
+    negative = np.empty(nf, np.bool_)
+    cut = np.empty(nf, np.int64)
+    corner_values = np.empty((8, nf), np.float64)
+    vals, value = np.empty((4, nf), np.float64), np.empty((4, nf), np.float64)
+    points, corner = np.empty((4, 3), np.float64), np.empty((4, 3), np.float64)
+    mean_in, mean_out = np.empty(nf, np.float64), np.empty(nf, np.float64)
+    tri = np.empty((4 * MOST, 3, 3), np.float64)
+    film_of = np.empty(4 * MOST, np.int16)
+    n = np.int64(0)
+    for c in range(cells.size):
         base = cells[c]
-        here = source.copy()
-        if from_void:
-            if not _open_codes(
-                base, corner_offsets, row_of, code, count, start, interval_code, step_of_bits, is_open, piece, here
-            ):
-                continue
-        present = np.empty(films, np.int64)
-        _present(base, corner_offsets, row_of, code, count, start, interval_code, step_of_bits, present)
-        changing = 0
-        for f in range(nf):
-            below = 0
-            for a in range(8):
-                below += values[row_of[base + corner_offsets[a]], f] < 0
-            changing += 0 < below < 8
-        vals = np.empty((4, nf), np.float64)
-        points = np.empty((4, 3), np.float64)
-        face = (
-            np.empty((4, 3)), np.empty((4, nf)), np.empty(nf), np.empty(nf), np.empty((3, 3)), np.empty((3, nf)),
-        )  # fmt: skip
-        scratch = (
-            np.empty((STACK, 3, 3)), np.empty((STACK, 3, nf)), np.empty(STACK, np.int64), np.empty(nf), np.empty(nf),
-        )  # fmt: skip
-        found = np.empty((400, 3, 3), np.float64)
-        n = 0
-        bz = base // (ny * nx)
-        by = (base // nx) % ny
-        bx = base % nx
+        if from_void and not _open_codes(
+            base, corner_offsets, row_of, code, count, start, interval_code, is_open, piece, here
+        ):
+            continue
+        _present(base, corner_offsets, row_of, code, count, start, interval_code, present)
+        nc = -1
+        before = n
         for film in range(films):
             if present[film] == 0 or stage[film] == 0:
                 continue
-            before = n
-            for t in range(6):
-                for a in range(4):
-                    o = TETRAHEDRA[t, a]
-                    vals[a] = values[row_of[base + corner_offsets[o]]]
-                    points[a, 0] = (bx + (o & 1)) * dx
-                    points[a, 1] = (by + ((o >> 1) & 1)) * dy
-                    points[a, 2] = zc[bz + (o >> 2)]
-                for side in range(3):
-                    f = ti[film] if side == 0 else (bi[film] if side == 1 else gi[film])
-                    if f < 0:
-                        continue
-                    n, covered = _tetra_triangles(
-                        vals, points, f, film, side == 1, changing == 1, here, ti, bi, gi, face, scratch, found, n
-                    )
-                    if covered:
-                        partly[c] = 1
-            if fill:
-                for q in range(before, n):
-                    films_of[first[c] + q] = film
-        number[c] = n
-        if fill:
-            for q in range(n):
-                triangles[first[c] + q] = found[q]
-        if n == 0:
-            partly[c] = 0
-    return number, partly
+            if nc < 0:
+                nc = _cell_values(base, corner_offsets, row_of, values, negative, cut, corner_values)
+            if n + MOST > tri.shape[0]:
+                tri = np.concatenate((tri, np.empty_like(tri)))
+                film_of = np.concatenate((film_of, np.empty_like(film_of)))
+            bz, by, bx = base // (ny * nx), (base // nx) % ny, base % nx
+            first = n
+            n, ends = _film_triangles(
+                film, bx, by, bz, corner_values, cut, nc, negative, here, ti, bi, gi, zc, dx, dy, tri, n, vals, points,
+                corner, value, mean_in, mean_out,
+            )  # fmt: skip
+            film_of[first:n] = film
+            if ends and n > first:
+                partly[c] = 1
+        number[c] = n - before
+    return tri[:n].copy(), film_of[:n].copy(), number, partly
+
+
+def bare_triangles(
+    cells: np.ndarray, corner_offsets: np.ndarray, shape: tuple[int, int, int], row_of: np.ndarray, values: np.ndarray,
+    code: np.ndarray, count: np.ndarray, start: np.ndarray, interval_code: np.ndarray, ti: np.ndarray, bi: np.ndarray,
+    gi: np.ndarray, stage: np.ndarray, source: np.ndarray, is_open: np.ndarray, piece: np.ndarray, zc: np.ndarray,
+    dx: float, dy: float,
+) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:  # fmt: skip
+    """The bare triangles of staged films in the mixed cells.
+
+    The etchant comes from the films that `source` marks; where none is marked, from the voids whose roots `is_open`
+    marks.
+
+    Returns
+    -------
+    triangles : (n, 3, 3) float64, um from the first sample in x and y; cell after cell
+    films : (n,) int16
+    number : (cells,) int32, how many triangles each cell has
+    partly : (cells,) uint8, whether the bare surface of some film may end in the cell
+    """
+
+    def run(first: int) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
+        found: tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray] = _triangles_in(
+            cells[first : first + RUN], corner_offsets, shape, row_of, values, code, count, start, interval_code, ti,
+            bi, gi, stage, source, is_open, piece, zc, dx, dy,
+        )  # fmt: skip
+        return found
+
+    with ThreadPoolExecutor(get_num_threads()) as threads:
+        found = list(threads.map(run, range(0, max(len(cells), 1), RUN)))
+    triangles, films, number, partly = (np.concatenate(parts) for parts in zip(*found, strict=True))
+    return triangles, films, number, partly

@@ -17,6 +17,7 @@ import numpy as np
 from numba import njit, prange
 
 MAX_INTERVALS = 24
+RUN = 1024  # samples that a thread takes at a time
 SLIVER = 2e-5  # shortest interval of an edge that counts, as a share of the edge
 SAME_FACE = 2e-3  # of a sample's spacing: two distances no farther apart are those of one face
 CRACK = 0.02  # the same for a void between two solids: thinner ones come of cut corners, not of gaps
@@ -45,6 +46,16 @@ def paint(code, top, floor, gone, has_floor, has_gone, k):
                     code[i] = -1
             elif code[i] == -1:
                 code[i] = -1 - k
+
+
+@njit(cache=True)
+def films_in(codes, films):
+    """Which of the films occur among the codes, `(films,)` bool."""
+    found = np.zeros(films, np.bool_)
+    for i in range(codes.size):
+        if codes[i] >= 0:
+            found[codes[i]] = True
+    return found
 
 
 @njit(cache=True)
@@ -124,14 +135,14 @@ def _closed(code_out, end_out, m):
 
 
 @njit(cache=True)
-def partition(va, vb, ti, bi, gi, code_out, end_out):
+def partition(va, vb, ti, bi, gi, code_out, end_out, cuts, mid):
     """Cut the edge between two samples into intervals of one code.
 
     Writes the codes and the intervals' upper ends (share of the edge, the last is 1) and returns
     their number; intervals shorter than `SLIVER` are dropped. The first and the last always have the
-    codes of the samples at the ends, however short.
+    codes of the samples at the ends, however short. `cuts (MAX_INTERVALS,)` and `mid (fields,)` float64
+    are scratch.
     """
-    cuts = np.empty(MAX_INTERVALS, np.float64)
     n = 0
     for f in range(va.size):
         a = va[f]
@@ -144,7 +155,6 @@ def partition(va, vb, ti, bi, gi, code_out, end_out):
                 j -= 1
             cuts[j] = c
             n += 1
-    mid = np.empty(va.size, np.float64)
     low = 0.0
     m = 0
     for j in range(n + 1):
@@ -205,48 +215,82 @@ def near_samples(mixed):
     return near
 
 
+@njit(cache=True)
+def _one_cut(values, s, r):
+    """Where the edge between two samples of unlike codes is cut, if all its cuts are one within a `SLIVER`; else -1."""
+    low, high = 2.0, -1.0
+    for f in range(values.shape[1]):
+        a, b = values[s, f], values[r, f]
+        if (a < 0) != (b < 0):
+            c = np.float64(a / (a - b))
+            low, high = min(low, c), max(high, c)
+    return low if high - low < SLIVER else -1.0
+
+
 @njit(cache=True, parallel=True)
 def cut_edges(samples, row_of, code, values, ti, bi, gi, strides, shape):
     """Count the intervals on every edge from every near sample, `(m, 7)` uint8; 0 where one code."""
     m = samples.size
     count = np.zeros((m, 7), np.uint8)
     nz, ny, nx = shape
-    for s in prange(m):
-        codes = np.empty(MAX_INTERVALS, np.int16)
-        ends = np.empty(MAX_INTERVALS, np.float32)
-        i = samples[s]
-        z = i // (ny * nx)
-        y = (i // nx) % ny
-        x = i % nx
-        for d in range(7):
-            if z + EDGE_STEPS[d, 0] >= nz or y + EDGE_STEPS[d, 1] >= ny or x + EDGE_STEPS[d, 2] >= nx:
-                continue
-            j = i + strides[d]
-            if code[i] == code[j] or row_of[j] < 0:
-                continue
-            count[s, d] = partition(values[s], values[row_of[j]], ti, bi, gi, codes, ends)
+    for run in prange((m + RUN - 1) // RUN):
+        codes, ends = np.empty(MAX_INTERVALS, np.int16), np.empty(MAX_INTERVALS, np.float32)
+        cuts, mid = np.empty(MAX_INTERVALS, np.float64), np.empty(values.shape[1], np.float64)
+        for s in range(run * RUN, min(run * RUN + RUN, m)):
+            i = samples[s]
+            z, y, x = i // (ny * nx), (i // nx) % ny, i % nx
+            for d in range(7):
+                if z + EDGE_STEPS[d, 0] >= nz or y + EDGE_STEPS[d, 1] >= ny or x + EDGE_STEPS[d, 2] >= nx:
+                    continue
+                j = i + strides[d]
+                if code[i] == code[j] or row_of[j] < 0:
+                    continue
+                if _one_cut(values, s, row_of[j]) >= 0:
+                    count[s, d] = 2
+                else:
+                    count[s, d] = partition(values[s], values[row_of[j]], ti, bi, gi, codes, ends, cuts, mid)
     return count
 
 
+@njit(cache=True)
+def edge_starts(count):
+    """Where the intervals of every edge begin, `(7 m + 1,)` int64."""
+    flat = count.reshape(-1)
+    start = np.empty(flat.size + 1, np.int64)
+    total = 0
+    for e in range(flat.size):
+        start[e] = total
+        total += flat[e]
+    start[-1] = total
+    return start
+
+
 @njit(cache=True, parallel=True)
-def fill_edges(samples, row_of, values, ti, bi, gi, strides, count, start):
+def fill_edges(samples, row_of, code, values, ti, bi, gi, strides, count, start):
     """Codes and upper ends of the intervals counted by `cut_edges`, edge after edge."""
     total = start[-1]
     code_out = np.empty(total, np.int16)
     end_out = np.empty(total, np.float32)
-    for s in prange(samples.size):
-        codes = np.empty(MAX_INTERVALS, np.int16)
-        ends = np.empty(MAX_INTERVALS, np.float32)
-        for d in range(7):
-            n = np.int64(count[s, d])
-            if n == 0:
-                continue
-            j = row_of[samples[s] + strides[d]]
-            partition(values[s], values[j], ti, bi, gi, codes, ends)
-            at = start[s * 7 + d]
-            for q in range(n):
-                code_out[at + q] = codes[q]
-                end_out[at + q] = ends[q]
+    m = samples.size
+    for run in prange((m + RUN - 1) // RUN):
+        codes, ends = np.empty(MAX_INTERVALS, np.int16), np.empty(MAX_INTERVALS, np.float32)
+        cuts, mid = np.empty(MAX_INTERVALS, np.float64), np.empty(values.shape[1], np.float64)
+        for s in range(run * RUN, min(run * RUN + RUN, m)):
+            for d in range(7):
+                n = np.int64(count[s, d])
+                if n == 0:
+                    continue
+                j = samples[s] + strides[d]
+                at = start[s * 7 + d]
+                cut = _one_cut(values, s, row_of[j]) if n == 2 else -1.0
+                if cut >= 0:
+                    code_out[at], code_out[at + 1] = code[samples[s]], code[j]
+                    end_out[at], end_out[at + 1] = cut, 1.0
+                    continue
+                partition(values[s], values[row_of[j]], ti, bi, gi, codes, ends, cuts, mid)
+                for q in range(n):
+                    code_out[at + q] = codes[q]
+                    end_out[at + q] = ends[q]
     return code_out, end_out
 
 

@@ -1,8 +1,8 @@
-"""Where an etch front starts: exact distances of nodes from the bare faces of films.
+"""Where an etch front starts: exact distances of nodes from the bare faces of their films.
 
-Every node near a bare face takes the least distance to all of its triangles in reach. Where a face
-ends under a cover the reach is longer, as no difference scheme can follow a front round a corner from
-its first samples.
+Every node near a cell with bare triangles (`kernels.faces`) takes the least distance to all triangles in
+reach. Where a face ends under a cover the reach is longer, as no difference scheme can follow a front
+round a corner from its first samples.
 """
 
 from __future__ import annotations
@@ -30,11 +30,16 @@ def _code_of(values, ti, bi, gi):
 
 
 @njit(cache=True)
-def _closest(px, py, pz, t):
-    """The point of the triangle t, `(3, 3)`, closest to a point."""
-    ax, ay, az = t[0, 0], t[0, 1], t[0, 2]
-    ux, uy, uz = t[1, 0] - ax, t[1, 1] - ay, t[1, 2] - az
-    vx, vy, vz = t[2, 0] - ax, t[2, 1] - ay, t[2, 2] - az
+def _closest(px, py, pz, triangles, q):
+    """The point of triangle q of `(n, 3, 3)` closest to a point.
+
+    References
+    ----------
+    C. Ericson, Real-Time Collision Detection, Morgan Kaufmann, 2005, section 5.1.5 (from memory).
+    """
+    ax, ay, az = triangles[q, 0, 0], triangles[q, 0, 1], triangles[q, 0, 2]
+    ux, uy, uz = triangles[q, 1, 0] - ax, triangles[q, 1, 1] - ay, triangles[q, 1, 2] - az
+    vx, vy, vz = triangles[q, 2, 0] - ax, triangles[q, 2, 1] - ay, triangles[q, 2, 2] - az
     wx, wy, wz = px - ax, py - ay, pz - az
     d1 = ux * wx + uy * wy + uz * wz
     d2 = vx * wx + vy * wy + vz * wz
@@ -70,7 +75,7 @@ def _closest(px, py, pz, t):
 
 
 @njit(cache=True)
-def _sees(px, py, pz, qx, qy, qz, film, code, cell_row, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid):
+def _sees(px, py, pz, qx, qy, qz, film, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid):
     """Whether the straight line from p to the face at q runs through the film, or void, alone.
 
     Codes along it come from the fields between the samples (trilinear); `mid (fields,)` is scratch.
@@ -88,7 +93,7 @@ def _sees(px, py, pz, qx, qy, qz, film, code, cell_row, row_of, values, ti, bi, 
         z = min(max(np.searchsorted(zc, at) - 1, 0), nz - 2)
         base = (z * ny + y) * nx + x
         here = np.int64(code[base])
-        if cell_row[base] >= 0:
+        if cell_mixed[base]:
             wx, wy, wz = fx - x, fy - y, (at - zc[z]) / (zc[z + 1] - zc[z])
             mid[:] = 0.0
             for a in range(8):
@@ -103,106 +108,147 @@ def _sees(px, py, pz, qx, qy, qz, film, code, cell_row, row_of, values, ti, bi, 
 
 
 @njit(cache=True)
-def _least_way(x, y, z, cx, cy, cz, zc, dx, dy):
-    """A lower bound of the distance from a sample's surroundings (one cell) to a cell."""
-    ax = max(cx - x, x - cx - 1, 0) * dx
-    ay = max(cy - y, y - cy - 1, 0) * dy
-    az = max(zc[cz] - zc[z], zc[z] - zc[cz + 1], 0.0)
-    return max(np.sqrt(ax * ax + ay * ay + az * az) - max(dx, dy), 0.0)
+def _gap(p, low, high):
+    """How far a coordinate lies outside an interval."""
+    return max(low - p, p - high, 0.0)
+
+
+@njit(cache=True)
+def _earliest(
+    px, py, pz, x, y, z, reach, film, slow, known, open_only, bare_of, box, first, triangles, films_of, base_time,
+    least_base, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid,
+):  # fmt: skip
+    """The earliest start before `known` for a node at p by sample (x, y, z): time, place on a face, and shell.
+
+    Shell 0 are the cells that touch the sample. With `open_only` a face in the others counts only if the
+    node sees it. The shell is -1 if there is no such start.
+    """
+    nz, ny, nx = shape
+    best = known
+    at_x = at_y = at_z = 0.0
+    found = -1
+    for r in range(reach + 1):  # shell after shell, so that most of the farther cells can be passed by
+        for cz in range(max(z - 1 - r, 0), min(z + 1 + r, nz - 1)):
+            if _gap(pz, zc[cz], zc[cz + 1]) * slow >= best:
+                continue
+            for cy in range(max(y - 1 - r, 0), min(y + 1 + r, ny - 1)):
+                shell = cz == z - 1 - r or cz == z + r or cy == y - 1 - r or cy == y + r
+                for cx in range(x - 1 - r, x + 1 + r, 1 if shell else 2 * r + 1):
+                    c = bare_of[(cz * ny + cy) * nx + cx] if 0 <= cx < nx - 1 else -1
+                    if c < 0:
+                        continue
+                    gx = _gap(px, box[c, 0], box[c, 3])
+                    gy = _gap(py, box[c, 1], box[c, 4])
+                    gz = _gap(pz, box[c, 2], box[c, 5])
+                    if least_base[c] + np.sqrt(gx * gx + gy * gy + gz * gz) * slow >= best:
+                        continue
+                    for q in range(first[c], first[c + 1]):
+                        if films_of[q] != film or base_time[q] >= best:
+                            continue
+                        qx, qy, qz = _closest(px, py, pz, triangles, q)
+                        d = np.sqrt((px - qx) * (px - qx) + (py - qy) * (py - qy) + (pz - qz) * (pz - qz))
+                        start = base_time[q] + d * slow
+                        if start >= best:
+                            continue
+                        if open_only and r > 0 and not _sees(
+                            px, py, pz, qx, qy, qz, film, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx,
+                            dy, mid,
+                        ):  # fmt: skip
+                            continue
+                        best = start
+                        at_x, at_y, at_z = qx, qy, qz
+                        found = r
+    return best, at_x, at_y, at_z, found
 
 
 @njit(cache=True, parallel=True)
 def nearest_starts(
-    nodes, node_sample, node_film, place, reach, cell_row, first, triangles, films_of, base_time, slowness,
-    code, row_of, values, ti, bi, gi, shape, zc, dx, dy, time, beyond,
+    nodes, node_sample, node_film, place, reach, bare_of, box, first, triangles, films_of, base_time, least_base,
+    slowness, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, time, beyond,
 ):  # fmt: skip
     """Lower `time` of the listed nodes to the earliest start at a bare triangle within reach.
 
     A start is the triangle's `base_time (triangles,)` plus the distance times the node's slowness;
-    `reach (listed,)` is in cells. `beyond` takes how much farther, um, a front that comes across a
-    thin film has to go from the node's place to its sample.
+    `reach (listed,)` is in cells. `bare_of (n,)` numbers the cells that have triangles, -1 for none;
+    `box (cells, 6)` is the box round them and `least_base` the least of their base times. `beyond` takes how
+    much farther, um, a front that comes across a thin film has to go from the node's place to its sample.
     """
-    nz, ny, nx = shape
+    _, ny, nx = shape
     for k in prange(nodes.size):
         a = nodes[k]
-        film = node_film[a]
         i = node_sample[a]
-        z = i // (ny * nx)
-        y = (i // nx) % ny
-        x = i % nx
+        z, y, x = i // (ny * nx), (i // nx) % ny, i % nx
+        film = node_film[a]
         px, py, pz = np.float64(place[a, 0]), np.float64(place[a, 1]), np.float64(place[a, 2])
+        mid = np.empty(values.shape[1], np.float64)
+        for open_only in (False, True):  # the nearest face of all is mostly one that the node sees
+            best, qx, qy, qz, found = _earliest(
+                px, py, pz, x, y, z, np.int64(reach[k]), film, slowness[a], time[a], open_only, bare_of, box, first,
+                triangles, films_of, base_time, least_base, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc,
+                dx, dy, mid,
+            )  # fmt: skip
+            if open_only or found <= 0 or _sees(
+                px, py, pz, qx, qy, qz, film, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid
+            ):  # fmt: skip
+                break
+        if found < 0:
+            continue
+        rx, ry, rz = px - qx, py - qy, pz - qz
         away_x, away_y, away_z = x * dx - px, y * dy - py, zc[z] - pz
         length = np.sqrt(away_x * away_x + away_y * away_y + away_z * away_z)
-        best = time[a]
-        along = beyond[a]
-        mid = np.empty(values.shape[1], np.float64)
-        for turn in range(2):  # the cells that touch the sample come first, so that most others can be passed by
-            r = np.int64(reach[k]) if turn == 1 else 0
-            if turn == 1 and r == 0:
-                continue
-            for cz in range(max(z - 1 - r, 0), min(z + 1 + r, nz - 1)):
-                for cy in range(max(y - 1 - r, 0), min(y + 1 + r, ny - 1)):
-                    for cx in range(max(x - 1 - r, 0), min(x + 1 + r, nx - 1)):
-                        c = cell_row[(cz * ny + cy) * nx + cx]
-                        if c < 0 or first[c] == first[c + 1]:
-                            continue
-                        touches = z - 1 <= cz <= z and y - 1 <= cy <= y and x - 1 <= cx <= x
-                        if turn == 1 and (touches or _least_way(x, y, z, cx, cy, cz, zc, dx, dy) * slowness[a] >= best):
-                            continue
-                        for q in range(first[c], first[c + 1]):
-                            if films_of[q] != film:
-                                continue
-                            qx, qy, qz = _closest(px, py, pz, triangles[q])
-                            rx, ry, rz = px - qx, py - qy, pz - qz
-                            d = np.sqrt(rx * rx + ry * ry + rz * rz)
-                            start = base_time[q] + d * slowness[a]
-                            if start >= best:
-                                continue
-                            if turn == 1 and not _sees(
-                                px, py, pz, qx, qy, qz, film, code, cell_row, row_of, values, ti, bi, gi, shape,
-                                zc, dx, dy, mid,
-                            ):
-                                continue
-                            best = start
-                            further = (rx * away_x + ry * away_y + rz * away_z) / max(d, 1e-9)
-                            along = further if abs(further) > HEAD_ON * length else 0.0
+        further = (rx * away_x + ry * away_y + rz * away_z) / max(np.sqrt(rx * rx + ry * ry + rz * rz), 1e-9)
         time[a] = best
-        beyond[a] = along
+        beyond[a] = further if abs(further) > HEAD_ON * length else 0.0
 
 
 @njit(cache=True, parallel=True)
-def face_times(triangles, cell_of, cells, corner_offsets, shape, code, source, node_of, time, slowness, zc, dx, dy):
-    """When an earlier front gets to each triangle, `(triangles,)`: from the corners of its cell in a source film.
-
-    `node_of (n,)` gives the front's node of a sample's own film, -1 for none.
-    """
-    _, ny, nx = shape
-    offset = source.size // 2
-    out = np.full(triangles.shape[0], np.inf)
-    for q in prange(triangles.shape[0]):
-        base = cells[cell_of[q]]
-        for a in range(8):
-            i = base + corner_offsets[a]
-            if code[i] < 0 or source[code[i] + offset] == 0 or node_of[i] < 0:
-                continue
-            px, py, pz = (i % nx) * dx, ((i // nx) % ny) * dy, zc[i // (ny * nx)]
-            qx, qy, qz = _closest(px, py, pz, triangles[q])
-            d = np.sqrt((px - qx) ** 2 + (py - qy) ** 2 + (pz - qz) ** 2)
-            out[q] = min(out[q], time[node_of[i]] + d * slowness[node_of[i]])
+def boxes(triangles, first):
+    """Box (least and greatest x, y, z) round the triangles of every cell, `(cells, 6)`."""
+    out = np.empty((first.size - 1, 6), np.float64)
+    for c in prange(first.size - 1):
+        for g in range(3):
+            low, high = np.inf, -np.inf
+            for q in range(first[c], first[c + 1]):
+                for h in range(3):
+                    low = min(low, triangles[q, h, g])
+                    high = max(high, triangles[q, h, g])
+            out[c, g], out[c, 3 + g] = low, high
     return out
 
 
-@njit(cache=True)
-def reach_of_nodes(node_sample, node_film, cells, cell_number, partly, shape, films, node_reach):
-    """How many cells beyond its own each node looks: -1 not at all, NEAR by a bare cell, FAR by a partly bare one.
+@njit(cache=True, parallel=True)
+def face_times(
+    base_time, triangles, first, cells, corner_offsets, shape, code, source, node_of, time, before, slowness, zc, dx, dy
+):
+    """Lower `base_time (triangles,)` to when an earlier front gets to each triangle from the corners of its cell.
 
-    Fills `node_reach (nodes,)` int8 by way of the samples near bare cells.
+    Only cells that the front gets to sooner than `before (nodes,)` are looked at. Triangles lie cell after cell of
+    `cells` from `first`; `node_of (n,)` gives the front's node of a sample's own film, -1 for none.
+    """
+    _, ny, nx = shape
+    offset = source.size // 2
+    for c in prange(cells.size):
+        for a in range(8):
+            i = cells[c] + corner_offsets[a]
+            k = node_of[i]
+            if code[i] < 0 or source[code[i] + offset] == 0 or k < 0 or not time[k] < before[k]:
+                continue
+            px, py, pz = (i % nx) * dx, ((i // nx) % ny) * dy, zc[i // (ny * nx)]
+            for q in range(first[c], first[c + 1]):
+                qx, qy, qz = _closest(px, py, pz, triangles, q)
+                d = np.sqrt((px - qx) ** 2 + (py - qy) ** 2 + (pz - qz) ** 2)
+                base_time[q] = min(base_time[q], time[k] + d * slowness[k])
+
+
+@njit(cache=True)
+def sample_reach(cells, partly, shape):
+    """How many cells beyond its own a node at each sample looks, `(n,)` int8, by the cells with triangles.
+
+    -1 for not at all, NEAR by such a cell, FAR by one that is partly bare.
     """
     nz, ny, nx = shape
     near = np.full(nz * ny * nx, -1, np.int8)
     for c in range(cells.size):
-        if cell_number[c] == 0:
-            continue
         base = cells[c]
         z = base // (ny * nx)
         y = (base // nx) % ny
@@ -215,5 +261,18 @@ def reach_of_nodes(node_sample, node_film, cells, cell_number, partly, shape, fi
                     i = (kz * ny + ky) * nx + kx
                     if near[i] < mark:
                         near[i] = mark
-    for a in range(node_sample.size):
-        node_reach[a] = near[node_sample[a]]
+    return near
+
+
+@njit(cache=True)
+def mark_ends(cells, bare_of, cell_mixed, code, corner_offsets, stage, strides, partly):
+    """Mark as partly bare the cells with triangles that have a neighbour, of the same films, without any."""
+    for c in range(cells.size):
+        for d in range(6):
+            other = cells[c] + (strides[d // 2] if d % 2 else -strides[d // 2])
+            if partly[c] or other < 0 or not cell_mixed[other] or bare_of[other] >= 0:
+                continue
+            for a in range(8):
+                k = code[other + corner_offsets[a]]
+                if k >= 0 and stage[k]:
+                    partly[c] = 1

@@ -65,35 +65,92 @@ def tetrahedron_share(values: np.ndarray, work: np.ndarray, sizes: np.ndarray, l
 
 
 @njit(cache=True)
-def cube_share(corners: np.ndarray, work: np.ndarray, sizes: np.ndarray, level: np.ndarray) -> float:
-    """Share of a cube in which all three fields of `corners` `(8, 3)` are negative."""
-    values = np.empty((4, 3))
+def below_share(a: float, b: float, c: float, d: float) -> float:
+    """Share of a tetrahedron in which one linear field with these corner values is negative."""
+    if max(max(a, b), max(c, d)) <= 0:
+        return 1.0
+    turned = int(a < 0) + int(b < 0) + int(c < 0) + int(d < 0) == 3
+    if turned:
+        a, b, c, d = -a, -b, -c, -d
+    for _ in range(3):  # the lowest first
+        if b < a:
+            a, b = b, a
+        if c < b:
+            b, c = c, b
+        if d < c:
+            c, d = d, c
+    if a >= 0:
+        share = 0.0
+    else:
+        p, q = a / (a - c), a / (a - d)
+        if b >= 0:
+            share = a / (a - b) * p * q
+        else:
+            r, s = b / (b - c), b / (b - d)
+            share = p * q + s * p * (1.0 - q) + (1.0 - p) * r * s
+    return 1.0 - share if turned else share
+
+
+@njit(cache=True)
+def cube_share(
+    corners: np.ndarray, values: np.ndarray, work: np.ndarray, sizes: np.ndarray, level: np.ndarray
+) -> float:
+    """Share of a cube in which all three fields of `corners` `(8, 3)` are negative; the rest is scratch."""
     total = 0.0
     for n in range(6):
-        for i in range(4):
-            for k in range(3):
-                values[i, k] = corners[TETRAHEDRA[n, i], k]
-        total += tetrahedron_share(values, work, sizes, level)
+        crossing = -1
+        several = False
+        empty = False
+        for k in range(3):
+            low, high = np.inf, -np.inf
+            for i in range(4):
+                v = corners[TETRAHEDRA[n, i], k]
+                values[i, k] = v
+                low, high = min(low, v), max(high, v)
+            empty |= low >= 0.0
+            if high > 0.0:
+                several = crossing >= 0
+                crossing = k
+        if empty:
+            continue
+        if crossing < 0:
+            total += 1.0
+        elif several:
+            total += tetrahedron_share(values, work, sizes, level)
+        else:
+            total += below_share(values[0, crossing], values[1, crossing], values[2, crossing], values[3, crossing])
     return total / 6.0
 
 
 @njit(cache=True)
-def gather(
-    field: np.ndarray, sign: float, iz: int, iy: int, ix: int, corners: np.ndarray, column: int
-) -> tuple[float, float]:
-    """Put a field's eight values around a cube into a column of `corners`; their least and greatest."""
+def gather(field: np.ndarray, sign: float, iz: int, iy: int, ix: int, corners: np.ndarray, column: int) -> None:
+    """Put a field's eight values around a cube into a column of `corners`."""
     nz, ny, nx = field.shape
-    low = np.inf
-    high = -np.inf
     for c in range(8):
         x = min(max(ix - 1 + (c & 1), 0), nx - 1)
         y = min(max(iy - 1 + ((c >> 1) & 1), 0), ny - 1)
         z = min(max(iz - 1 + (c >> 2), 0), nz - 1)
-        value = sign * field[z, y, x]
-        corners[c, column] = value
-        low = min(low, value)
-        high = max(high, value)
-    return low, high
+        corners[c, column] = sign * field[z, y, x]
+
+
+@njit(cache=True)
+def _range_of_row(field: np.ndarray, sign: float, iz: int, iy: int, low: np.ndarray, high: np.ndarray) -> float:
+    """Least and greatest value of a field over the four samples at each x of a row of cubes; the least of all."""
+    nz, ny, nx = field.shape
+    if nx < low.size:  # a single value that holds everywhere
+        low[:] = sign * field[0, 0, 0]
+        high[:] = sign * field[0, 0, 0]
+        return sign * field[0, 0, 0]
+    z0, z1 = max(iz - 1, 0), min(iz, nz - 1)
+    y0, y1 = max(iy - 1, 0), min(iy, ny - 1)
+    least = np.inf
+    for x in range(nx):
+        a, b = sign * field[z0, y0, x], sign * field[z0, y1, x]
+        c, d = sign * field[z1, y0, x], sign * field[z1, y1, x]
+        low[x] = min(min(a, b), min(c, d))
+        high[x] = max(max(a, b), max(c, d))
+        least = min(least, low[x])
+    return least
 
 
 @njit(cache=True, parallel=True)
@@ -115,26 +172,30 @@ def row_volumes(
     """
     nz, ny, nx = top.shape
     out = np.zeros(ny + 1)
-    for iy in prange(ny + 1):
-        corners = np.empty((8, 3))
-        work = np.empty((DEEPEST, 4, 3))
-        sizes = np.empty(DEEPEST)
-        level = np.empty(DEEPEST, dtype=np.int64)
+    for row in prange(ny + 1):
+        iy = np.int64(row)
+        low, high = np.empty((3, nx)), np.empty((3, nx))
+        corners, values = np.empty((8, 3)), np.empty((4, 3))
+        work, sizes, level = np.empty((DEEPEST, 4, 3)), np.empty(DEEPEST), np.empty(DEEPEST, dtype=np.int64)
         total = 0.0
         for iz in range(nz + 1):
+            if _range_of_row(top, 1.0, iz, iy, low[0], high[0]) >= 0.0:
+                continue
+            if _range_of_row(floor, -1.0, iz, iy, low[1], high[1]) >= 0.0:
+                continue
+            if _range_of_row(gone, 1.0, iz, iy, low[2], high[2]) >= 0.0:
+                continue
             for ix in range(nx + 1):
-                low, high = gather(top, 1.0, iz, iy, ix, corners, 0)
-                if low >= 0.0:
-                    continue
-                low, above = gather(floor, -1.0, iz, iy, ix, corners, 1)
-                if low >= 0.0:
-                    continue
-                low, beyond = gather(gone, 1.0, iz, iy, ix, corners, 2)
-                if low >= 0.0:
+                a, b = max(ix - 1, 0), min(ix, nx - 1)
+                lowest = max(min(low[0, a], low[0, b]), min(low[1, a], low[1, b]), min(low[2, a], low[2, b]))
+                if lowest >= 0.0:
                     continue
                 volume = dx[ix] * dy[iy] * dz[iz]
-                if max(high, above, beyond) > 0.0:
-                    volume *= cube_share(corners, work, sizes, level)
+                if max(high[0, a], high[0, b], high[1, a], high[1, b], high[2, a], high[2, b]) > 0.0:
+                    gather(top, 1.0, iz, iy, ix, corners, 0)
+                    gather(floor, -1.0, iz, iy, ix, corners, 1)
+                    gather(gone, 1.0, iz, iy, ix, corners, 2)
+                    volume *= cube_share(corners, values, work, sizes, level)
                 total += volume
         out[iy] = total
     return out

@@ -181,17 +181,22 @@ def _share_of_film(stack: FilmStack, part: Part, k: int) -> float:
 
 
 def surface_points(stack: FilmStack, part: Part) -> np.ndarray:
-    """Points where grid edges leave the part, `(m, 3)` float64 (x, y, z) um, exact to the fields."""
+    """Points where grid edges leave the part, `(m, 3)` float64 (x, y, z) um, exact to the fields.
+
+    With them the side ends of what is too thin to hold a sample.
+    """
     from flowemu.kernels import escape
+    from flowemu.stack.sides import side_points
 
     t, grid = stack.topology, stack.grid
+    pieces = np.array(sorted(part.pieces), np.int64)
     points = escape.leaving_points(
         t.samples, t.code.reshape(-1), t.strides, t.code.shape, t.count, t.start, t.interval_code, t.interval_end,
-        t.piece, np.array(sorted(part.pieces), np.int64), grid.z, grid.cell, grid.cell,
+        t.piece, pieces, grid.z, grid.cell, grid.cell,
     )  # fmt: skip
     points[:, 0] += grid.x[0]
     points[:, 1] = points[:, 1] + grid.y[0] if grid.ny > 1 else grid.y[0]
-    return points
+    return np.concatenate([points, side_points(stack, pieces)])
 
 
 def contact_area(stack: FilmStack, parts: Iterable[int], others: Iterable[int] | None = None) -> float:

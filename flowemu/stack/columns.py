@@ -31,9 +31,10 @@ def column(stack: FilmStack, x: float, y: float) -> list[Layer]:
     values = np.stack([_at(stack, field, x, y) for field in table.arrays], axis=1)
     layers: list[Layer] = []
     codes, ends = np.empty(MAX_INTERVALS, np.int16), np.empty(MAX_INTERVALS, np.float32)
+    cuts, mid = np.empty(MAX_INTERVALS, np.float64), np.empty(len(table.arrays), np.float64)
     z = stack.grid.z
     for k in range(len(z) - 1):
-        n = partition(values[k], values[k + 1], table.top, table.floor, table.gone, codes, ends)
+        n = partition(values[k], values[k + 1], table.top, table.floor, table.gone, codes, ends, cuts, mid)
         low = float(z[k])
         for code, end in zip(codes[:n], ends[:n], strict=True):
             high = float(z[k] + float(end) * (z[k + 1] - z[k]))

@@ -57,11 +57,10 @@ def not_nested(before: FilmStack, after: FilmStack) -> Iterator[str]:
 
 def changed_films(before: FilmStack, after: FilmStack, kept: set[int]) -> Iterator[str]:
     """Films that were to stay as they are and have another field than before."""
-    fields = {(f.name, f.step): f for f in after.films}
     for k in sorted(kept):
         film = before.films[k]
-        new = fields.get((film.name, film.step))
-        if new is not None and any(getattr(new, name) is not getattr(film, name) for name in ("top", "floor", "gone")):
+        like = [f for f in after.films if (f.name, f.step) == (film.name, film.step)]
+        if like and not any(f.top is film.top and f.floor is film.floor and f.gone is film.gone for f in like):
             yield f"film '{film.name}' changed although nothing acts on it"
 
 

@@ -52,6 +52,11 @@ class Obstacle:
         self.high = points.max(axis=0) if len(points) else np.zeros(3)
         self.pieces = np.array(sorted(part.pieces), np.int64)
         self.shared = self._shared_films()
+        t = stack.topology
+        self.boxes = kernel.film_boxes(
+            t.samples, t.code, t.count, t.start, t.interval_code, t.strides, len(stack.films)
+        )
+        self.order = list(self.shared)  # the film that was run into last comes first
 
     def _shared_films(self) -> dict[int, bool]:
         """Films of the rest, and whether the body holds pieces of the same film."""
@@ -66,30 +71,40 @@ class Obstacle:
                 out[k] = True
         return out
 
-    def depth(self, points: np.ndarray) -> float:
-        """How deep the deepest of these points lies in the rest, um."""
+    def touches(self, points: np.ndarray) -> bool:
+        """Whether one of these points lies deeper in the rest than is allowed."""
         grid, t = self.stack.grid, self.stack.topology
-        depth = np.zeros(len(points))
-        for k, shared in self.shared.items():
+        allowed = ALLOWED * grid.cell
+        depth = np.full(len(points), allowed)
+        for k in self.order:
             film = self.stack.films[k]
             floor = film.top if film.floor is None else film.floor
             gone = film.top if film.gone is None else film.gone
             kernel.film_depth(
-                depth, points, film.top, floor, gone, film.floor is not None, film.gone is not None, k, shared,
-                t.code, t.piece, self.pieces, grid.x[0], grid.y[0], grid.cell, grid.z,
+                depth, points, film.top, floor, gone, film.floor is not None, film.gone is not None, k, self.boxes[k],
+                self.shared[k], t.code, t.piece, self.pieces, grid.x[0], grid.y[0], grid.cell, grid.z,
             )  # fmt: skip
-        return float(depth.max(initial=0.0))
+            if depth.max(initial=0.0) > allowed:
+                self.order = [k, *(other for other in self.order if other != k)]
+                return True
+        return False
 
     def blocked(self, offset: np.ndarray, turn: float = 0.0, every: bool = False) -> bool:
-        """Whether the body, turned about its axis along z and moved, runs into the rest."""
-        points = self.all_points if every else self.points
+        """Whether the body, turned about its axis along z and moved, runs into the rest.
+
+        A share of its points is tried, and then, if `every` one is to count, all of them.
+        """
+        return any(
+            self.touches(self._moved(points, offset, turn))
+            for points in ((self.points, self.all_points) if every else (self.points,))
+        )
+
+    def _moved(self, points: np.ndarray, offset: np.ndarray, turn: float) -> np.ndarray:
         if turn:
             c, s = np.cos(turn), np.sin(turn)
             flat = points[:, :2] - self.centre[:2]
-            points = np.column_stack(
-                [flat @ np.array([[c, s], [-s, c]]) + self.centre[:2], points[:, 2]]
-            )
-        return self.depth(np.ascontiguousarray(points + offset)) > ALLOWED * self.stack.grid.cell
+            points = np.column_stack([flat @ np.array([[c, s], [-s, c]]) + self.centre[:2], points[:, 2]])
+        return np.ascontiguousarray(points + offset)
 
 
 def judge(stack: FilmStack, part: Part) -> Verdict:

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from weakref import WeakKeyDictionary
+
 import numpy as np
 
 from flowemu.stack.film import Film
@@ -9,6 +11,7 @@ from flowemu.stack.grid import Grid
 
 EVERYWHERE = np.full((1, 1, 1), -1.0, dtype=np.float32)
 NOWHERE = -EVERYWHERE
+_measured: WeakKeyDictionary[Film, float] = WeakKeyDictionary()
 
 
 def film_volume(film: Film, grid: Grid) -> float:
@@ -16,8 +19,14 @@ def film_volume(film: Film, grid: Grid) -> float:
 
     The fields are taken as linear on tetrahedra between the samples and constant from the outermost
     samples to the box. Error: that of the fields alone; nothing is counted by whole cells, so a flat
-    film of a tenth of a cell comes out exact.
+    film of a tenth of a cell comes out exact. A film is measured once, as it never changes.
     """
+    if film not in _measured:
+        _measured[film] = _measure(film, grid)
+    return _measured[film]
+
+
+def _measure(film: Film, grid: Grid) -> float:
     from flowemu.kernels.volume import row_volumes
 
     widths = [gaps(grid.x, grid.box[0], grid.box[2]), gaps(grid.y, grid.box[1], grid.box[3])]

@@ -120,14 +120,13 @@ class FilmStack:
         return FilmStack(self.grid, tuple(films), self.surface)
 
     def _recut(self, films: list[Film]) -> FilmStack:
+        from flowemu.stack.measure import film_volume
         from flowemu.stack.surfaces import recut_surface
         from flowemu.stack.topology import Topology
 
+        films = [film for k, film in enumerate(films) if k == 0 or film_volume(film, self.grid) > 0]
         topology = Topology.of(self.grid, films)
-        present = np.zeros(len(films), bool)
-        for codes in (topology.code, topology.interval_code):
-            found = np.unique(codes)
-            present[found[found >= 0]] = True
+        present = topology.present
         present[0] = True
         if not present.all():
             films = [film for film, there in zip(films, present, strict=True) if there]

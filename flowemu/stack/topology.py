@@ -128,10 +128,9 @@ class Topology:
         corner_offsets = (bits & 1) + ((bits >> 1) & 1) * nx + ((bits >> 2) & 1) * ny * nx
         flat = code.reshape(-1)
         count = regions.cut_edges(samples, row_of, flat, values, table.top, table.floor, table.gone, strides, shape)
-        start = np.zeros(count.size + 1, np.int64)
-        np.cumsum(count.reshape(-1), out=start[1:])
+        start = regions.edge_starts(count)
         interval_code, interval_end = regions.fill_edges(
-            samples, row_of, values, table.top, table.floor, table.gone, strides, count, start
+            samples, row_of, flat, values, table.top, table.floor, table.gone, strides, count, start
         )
         return cls(
             grid, table, code, cells, samples, row_of, values, count, start,
@@ -175,6 +174,19 @@ class Topology:
         if len(self.open_roots) == 1:
             return void & (roots == self.open_roots[0])
         return void & np.isin(roots, self.open_roots)
+
+    @property
+    def present(self) -> np.ndarray:
+        """Which films have a sample or an interval, `(films,)` bool."""
+        films = len(self.fields.top)
+        return regions.films_in(self.code.reshape(-1), films) | regions.films_in(self.interval_code, films)
+
+    @cached_property
+    def is_mixed(self) -> np.ndarray:
+        """Whether a mixed cell begins at a sample, flat bool."""
+        out = np.zeros(self.code.size, bool)
+        out[self.cells] = True
+        return out
 
     @cached_property
     def inner(self) -> InnerIntervals:

@@ -4,13 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
-from flowemu.kernels import faces as bare_faces
-from flowemu.kernels import fronts, starts, surface
+from flowemu.kernels import faces, fronts, starts, surface
 from flowemu.kernels.march import arrival_on_graph
-from flowemu.kernels.regions import STEP_OF_BITS
 from flowemu.stack.removed import complete
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.topology import Topology
@@ -161,14 +160,15 @@ def arrive(stack: FilmStack, rates: Mapping[int, float], limit: float = np.inf) 
         slowness = (1.0 / np.array([rates.get(k) or 1.0 for k in range(len(stack.films))]))[nodes.film]
         reach = limit + 1.5 * stack.band * float(np.max(slowness, initial=0.0))
         mine = Front(nodes, np.full(len(nodes.sample), np.inf), np.zeros(len(nodes.sample)), slowness)
-        _start_from_void(stack, mine, slowness)
+        _start_from_void(stack, mine)
         exact = np.isfinite(mine.time)
         for front in done:
-            _start_from_films(stack, mine, slowness, front)
+            Passage(stack, nodes, front.nodes).start(mine, front)
         mine = _march(stack, mine, np.where(exact, np.inf, slowness), reach)
+        passage = Passage(stack, nodes, nodes)
         for _ in range(MOST_CROSSINGS if len(group) > 1 else 0):
             again = Front(nodes, mine.time.copy(), mine.beyond.copy(), slowness)
-            _start_from_films(stack, again, slowness, mine)
+            passage.start(again, mine)
             sooner = again.time < mine.time - 0.02 * stack.grid.cell * slowness
             if not sooner.any():
                 break
@@ -190,67 +190,92 @@ def _march(stack: FilmStack, front: Front, slowness: np.ndarray, limit: float) -
 
 @dataclass(frozen=True, eq=False)
 class Faces:
-    """Bare triangles of the films that a front etches, `(n, 3, 3)` um, cell after cell from `first`."""
+    """Bare triangles of the films that a front etches, `(n, 3, 3)` um, cell after cell of `cells` from `first`.
+
+    `box (cells, 6)` lies round them, `partly (cells,)` marks the cells in which a bare surface ends.
+    """
 
     triangles: np.ndarray
     films: np.ndarray
-    cell: np.ndarray
+    cells: np.ndarray
     first: np.ndarray
-    number: np.ndarray
+    box: np.ndarray
     partly: np.ndarray
 
     @classmethod
     def of(cls, stack: FilmStack, nodes: Nodes, source: np.ndarray) -> Faces:
         t, grid = stack.topology, stack.grid
-        f = t.fields
+        f, code = t.fields, t.code.reshape(-1)
         is_open = np.zeros(len(t.piece), np.uint8)
         is_open[t.open_roots] = 1
-        given = (
-            t.cells, t.corner_offsets, STEP_OF_BITS, t.code.shape, t.row_of, t.values, t.code.reshape(-1), t.count,
-            t.start, t.interval_code, f.top, f.floor, f.gone, nodes.stage, source, is_open, t.piece, grid.z, grid.cell,
-            grid.cell,
+        triangles, films, number, partly = faces.bare_triangles(
+            t.cells, t.corner_offsets, t.code.shape, t.row_of, t.values, code, t.count, t.start, t.interval_code,
+            f.top, f.floor, f.gone, nodes.stage, source, is_open, t.piece, grid.z, grid.cell, grid.cell,
         )  # fmt: skip
-        nothing = np.zeros(1, np.int64), np.empty((0, 3, 3)), np.empty(0, np.int16)
-        number, partly = bare_faces.bare_triangles(*given, *nothing)
-        first = np.zeros(len(t.cells) + 1, np.int64)
-        np.cumsum(number, out=first[1:])
-        triangles, films = np.empty((first[-1], 3, 3)), np.empty(first[-1], np.int16)
-        if len(films):
-            bare_faces.bare_triangles(*given, first, triangles, films)
-        return cls(triangles, films, np.repeat(np.arange(len(t.cells)), number), first, number, partly)
+        bare = np.flatnonzero(number)
+        cells, partly = t.cells[bare], partly[bare]
+        numbers = _numbered(cells, code.size)
+        starts.mark_ends(cells, numbers, t.is_mixed, code, t.corner_offsets, nodes.stage, t.strides, partly)
+        first = np.concatenate([[0], np.cumsum(number[bare])])
+        return cls(triangles, films, cells, first, starts.boxes(triangles, first), partly)
 
 
-def _start(stack: FilmStack, front: Front, slowness: np.ndarray, faces: Faces, base: np.ndarray) -> None:
-    """Lower the front's times (its own arrays) near the faces that it starts from."""
+def _numbered(cells: np.ndarray, size: int, chosen: np.ndarray | None = None) -> np.ndarray:
+    """Number of every cell, or of the chosen ones, by its flat place, `(size,)` int32, -1 elsewhere."""
+    out = np.full(size, -1, np.int32)
+    chosen = np.arange(len(cells)) if chosen is None else chosen
+    out[cells[chosen]] = chosen
+    return out
+
+
+def _start(stack: FilmStack, front: Front, found: Faces, base: np.ndarray, chosen: np.ndarray) -> None:
+    """Lower the front's times (its own arrays) near the faces in the chosen cells."""
+    if not len(chosen):
+        return
     t, grid, nodes = stack.topology, stack.grid, front.nodes
-    reach = np.empty(len(nodes.sample), np.int8)
-    starts.reach_of_nodes(
-        nodes.sample, nodes.film, t.cells, faces.number, faces.partly, t.code.shape, len(stack.films), reach
-    )
+    reach = starts.sample_reach(found.cells[chosen], found.partly[chosen], t.code.shape)[nodes.sample]
     listed = np.flatnonzero(reach >= 0)
-    cell_row = np.full(t.code.size, -1, np.int32)
-    cell_row[t.cells] = np.arange(len(t.cells), dtype=np.int32)
     starts.nearest_starts(
-        listed, nodes.sample, nodes.film, nodes.place, reach[listed], cell_row, faces.first, faces.triangles,
-        faces.films, base, slowness, t.code.reshape(-1), t.row_of, t.values, t.fields.top, t.fields.floor,
+        listed, nodes.sample, nodes.film, nodes.place, reach[listed], _numbered(found.cells, t.code.size, chosen),
+        found.box, found.first, found.triangles, found.films, base, np.minimum.reduceat(base, found.first[:-1]),
+        front.slowness, t.code.reshape(-1), t.is_mixed, t.row_of, t.values, t.fields.top, t.fields.floor,
         t.fields.gone, t.code.shape, grid.z, grid.cell, grid.cell, front.time, front.beyond,
     )  # fmt: skip
 
 
-def _start_from_void(stack: FilmStack, front: Front, slowness: np.ndarray) -> None:
+def _start_from_void(stack: FilmStack, front: Front) -> None:
     source = np.zeros(2 * (len(stack.films) + 1) + 1, np.uint8)
-    faces = Faces.of(stack, front.nodes, source)
-    _start(stack, front, slowness, faces, np.zeros(len(faces.films)))
+    found = Faces.of(stack, front.nodes, source)
+    _start(stack, front, found, np.zeros(len(found.films)), np.arange(len(found.cells)))
 
 
-def _start_from_films(stack: FilmStack, front: Front, slowness: np.ndarray, earlier: Front) -> None:
-    t, grid = stack.topology, stack.grid
-    films = len(stack.films)
-    source = np.zeros(2 * (films + 1) + 1, np.uint8)
-    source[films + 1 :][:films][earlier.nodes.stage > 0] = 1
-    faces = Faces.of(stack, front.nodes, source)
-    base = starts.face_times(
-        faces.triangles, faces.cell, t.cells, t.corner_offsets, t.code.shape, t.code.reshape(-1), source,
-        earlier.nodes.own, earlier.time, earlier.slowness, grid.z, grid.cell, grid.cell,
-    )  # fmt: skip
-    _start(stack, front, slowness, faces, base)
+class Passage:
+    """Where an earlier front, or the same one, passes through the faces between films into a front's nodes."""
+
+    def __init__(self, stack: FilmStack, nodes: Nodes, earlier: Nodes) -> None:
+        self.stack, self.nodes = stack, nodes
+        films = len(stack.films)
+        self.source = np.zeros(2 * (films + 1) + 1, np.uint8)
+        self.source[films + 1 :][:films][earlier.stage > 0] = 1
+        self.before = np.full(len(earlier.sample), np.inf)
+
+    @cached_property
+    def faces(self) -> Faces:
+        return Faces.of(self.stack, self.nodes, self.source)
+
+    @cached_property
+    def base(self) -> np.ndarray:
+        """When the earlier front gets to each triangle, as far as it is known, s."""
+        return np.full(len(self.faces.films), np.inf)
+
+    def start(self, front: Front, earlier: Front) -> None:
+        """Lower the front's times by what the earlier front has reached since the last call."""
+        t, grid, found = self.stack.topology, self.stack.grid, self.faces
+        old = self.base.copy()
+        starts.face_times(
+            self.base, found.triangles, found.first, found.cells, t.corner_offsets, t.code.shape, t.code.reshape(-1),
+            self.source, earlier.nodes.own, earlier.time, self.before, earlier.slowness, grid.z, grid.cell, grid.cell,
+        )  # fmt: skip
+        self.before = earlier.time.copy()
+        sooner = np.add.reduceat(self.base < old, found.first[:-1]) if len(old) else np.empty(0, bool)
+        _start(self.stack, front, found, self.base, np.flatnonzero(sooner))

@@ -8,10 +8,13 @@ import numpy as np
 
 from flowemu.errors import StepError
 from flowemu.kernels import fronts
+from flowemu.stack.film import Film
 from flowemu.stack.measure import film_volume
 from flowemu.stack.removed import whole_pieces
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.wafer import Cut, Loss, Wafer
+
+SLIVER = 0.5  # cells^3: a piece without a sample below this is rounding
 
 
 def strip_film(wafer: Wafer, name: str, agent: str, tools: Any) -> Wafer:
@@ -40,16 +43,29 @@ def strip_film(wafer: Wafer, name: str, agent: str, tools: Any) -> Wafer:
         losses.append(Loss(name, film.material, 0.0, 0.0, 0.0, film_volume(film, stack.grid), True, True))
     if not losses:
         raise StepError(f"film '{name}' is buried; nothing of it can be reached")
-    after = stack.carve(partly).without(whole) if partly else stack.without(whole)
+    after = _without(stack.carve(partly), [stack.films[k] for k in whole])
     cut = Cut(tools.step, "strip", agent, 0.0, None, tuple(losses))
     back = tuple(coat for coat in wafer.back if coat.name != name)
     return wafer.now(after, cut, back=back, printed=None if name == "resist" else wafer.printed)
 
 
+def _without(stack: FilmStack, films: list[Film]) -> FilmStack:
+    """The stack without these very films, whatever their numbers are by now."""
+    return stack.without({k for k, film in enumerate(stack.films) if any(film is gone for gone in films)})
+
+
 def _pieces(stack: FilmStack, k: int) -> np.ndarray:
-    """Roots of the pieces of film `k` that hold a sample; a sliver without one goes with the rest."""
-    t = stack.topology
-    return np.unique(t.piece[np.flatnonzero(t.code.reshape(-1) == k)])
+    """Roots of the pieces of film `k`; slivers without a sample are left out and go with the rest."""
+    t, cell = stack.topology, stack.grid.cell
+    thick = t.piece[np.flatnonzero(t.code.reshape(-1) == k)]
+    inner = t.inner
+    upright = (inner.code == k) & (inner.direction == 2)
+    _, ny, nx = t.code.shape
+    z = t.samples[inner.row[upright]] // (ny * nx)
+    height = (inner.high - inner.low)[upright] * (stack.grid.z[z + 1] - stack.grid.z[z])
+    roots, at = np.unique(t.piece[inner.node[upright]], return_inverse=True)
+    total = np.bincount(at, weights=height, minlength=len(roots)) if len(roots) else np.empty(0)
+    return np.union1d(thick, roots[total >= SLIVER * cell])
 
 
 def _reached_pieces(stack: FilmStack, k: int) -> np.ndarray:
