@@ -71,6 +71,7 @@ def arrival_on_graph(
     dy: float,
     z_centres: np.ndarray,
     limit: float = np.inf,
+    seeds: np.ndarray | None = None,
 ) -> np.ndarray:
     """First arrival at the nodes of a graph; all as for `arrival_on_grid`, and each node has one plane `zi`.
 
@@ -78,9 +79,11 @@ def arrival_on_graph(
     ----------
     start, slowness : (n,) s and s/um
     nbr : (n, 6) int32
-        Node across each side, -1 for none.
+        Node across each side, -1 for none. A last row of -1 more than there are nodes saves a copy.
     zi : (n,) int
         Index into `z_centres`.
+    seeds : (m,) int
+        Where `start` is an earlier result but for some nodes that a front now reaches sooner, these nodes.
 
     Returns
     -------
@@ -89,8 +92,9 @@ def arrival_on_graph(
     time = np.append(start, np.nan).astype(np.float32)  # the last one is what a neighbour of -1 reads
     slow = np.append(slowness, np.inf).astype(np.float32)
     plane = np.append(zi, 0).astype(np.int32)
-    nbr = np.vstack([nbr, np.full((1, 6), -1)]).astype(np.int32)
-    march(time, slow, nbr, plane, weights_of(dx, dy, z_centres), limit)
+    if len(nbr) == len(start):
+        nbr = np.vstack([nbr, np.full((1, 6), -1)]).astype(np.int32)
+    march(time, slow, nbr, plane, weights_of(dx, dy, z_centres), limit, seeds)
     return np.where(time <= limit, time, np.float32(np.inf))[:-1]
 
 

@@ -38,7 +38,13 @@ CURRENT, WAITING, SPARE, USED, FAR, FAR_BUCKET = range(6)
 
 
 def march(
-    time: np.ndarray, slowness: np.ndarray, nbr: np.ndarray, plane: np.ndarray, weights: np.ndarray, limit: float
+    time: np.ndarray,
+    slowness: np.ndarray,
+    nbr: np.ndarray,
+    plane: np.ndarray,
+    weights: np.ndarray,
+    limit: float,
+    seeds: np.ndarray | None = None,
 ) -> None:
     """Lower `time` to the arrival times; those above `limit` are not final.
 
@@ -52,6 +58,8 @@ def march(
     nbr, plane : (6,) strides and (1,) size of a plane, or (n, 6) ids and (n,) plane of each node
     weights : (planes, 6, 4) float64
     limit : float, s
+    seeds : (m,) int
+        Nodes to begin from; all with a start if left out.
 
     Raises
     ------
@@ -76,10 +84,11 @@ def march(
     per_second = 1.0 / (BUCKET * weights[:, :, 0].min() * float(finite.min()))
     span = weights[:, :, 0].max() * float(finite.max()) * per_second + 3.0
     heads = np.full(1 << int(np.ceil(np.log2(min(span, MAX_BUCKETS)))), -1, np.int32)
-    pool = np.empty((np.count_nonzero(time < np.inf) + 4096, 2), np.int32)
+    seeds = np.flatnonzero(time < np.inf) if seeds is None else seeds
+    pool = np.empty((len(seeds) + 4096, 2), np.int32)
     state = np.array([0, 0, -1, 0, -1, int(LAST)])
     with np.errstate(invalid="ignore", over="ignore", divide="ignore"):  # for runs without the compiler
-        _fill(time, heads, pool, state, per_second)
+        _fill(seeds, time, heads, pool, state, per_second)
         while not _run(time, nbr, plane, weights, slowness, heads, pool, state, per_second, float(limit)):
             pool = np.concatenate([pool, np.empty_like(pool)])
 
@@ -266,7 +275,7 @@ def _empty_bucket(time, nbr, plane, weights, slowness, heads, pool, state, per_s
     return True
 
 
-@njit(cache=True, error_model="numpy")
+@njit(cache=True, error_model="numpy", nogil=True)
 def _run(time, nbr, plane, weights, slowness, heads, pool, state, per_second, limit):
     """March until no node waits or the limit is passed; False if the pool must grow first."""
     last = limit * per_second
@@ -284,8 +293,7 @@ def _run(time, nbr, plane, weights, slowness, heads, pool, state, per_second, li
 
 
 @njit(cache=True, error_model="numpy")
-def _fill(time, heads, pool, state, per_second):
-    """Enter every node with a start."""
-    for i in range(time.size):
-        if time[i] < np.inf:
-            _put(heads, pool, state, _bucket(time[i], per_second), i)
+def _fill(seeds, time, heads, pool, state, per_second):
+    """Enter the nodes to begin from."""
+    for i in seeds:
+        _put(heads, pool, state, _bucket(time[i], per_second), i)

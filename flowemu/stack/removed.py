@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from flowemu.kernels import fronts
-from flowemu.kernels.redistance import redistance
+from flowemu.kernels.carry import UNKNOWN, carried
+from flowemu.kernels.redistance import BOTH, redistance
 from flowemu.stack.film import BAND
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.topology import Topology
@@ -13,14 +13,16 @@ from flowemu.stack.topology import Topology
 RINGS = int(BAND) + 1
 
 
-def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray) -> np.ndarray:
+def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray, settled: bool = False) -> np.ndarray:
     """A removed field over the grid, `(nz, ny, nx)` float32 um, positive where the film goes.
 
     Parameters
     ----------
     value, known : flat or shaped as the topology's samples, float32 and bool
-        What is known at and right beside the film's samples. It is carried outward as it is, and then
-        made a distance again except where it changes sign.
+        What is known at and right beside the film's samples, to be carried outward from there.
+    settled : bool
+        Whether what stays, the negative side, holds distances already, as a front's times make them. All else is made
+        so, except where it changes sign.
     """
     t, grid = stack.topology, stack.grid
     value = value.reshape(t.code.shape).astype(np.float32)
@@ -29,12 +31,11 @@ def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray) -> np.ndarr
     if not known.any():
         return np.ascontiguousarray(t.on_grid(out))
     box = _box(known)
-    near, there = np.ascontiguousarray(value[box]), np.ascontiguousarray(known[box])
-    everywhere = np.ones(near.shape, bool)
-    for _ in range(RINGS):
-        near, there = fronts.spread_once(near, there, everywhere)
-    near = _level(np.where(there, near, -np.float32(stack.band)), grid.cell, grid.dz[box[0]])
-    out[box] = redistance(near, grid.cell, grid.cell, grid.z[box[0]], stack.band)
+    near = np.ascontiguousarray(value[box])
+    ring = carried(near, known[box], grid.z[box[0]], grid.cell, RINGS)
+    near = _level(np.where(ring < UNKNOWN, near, -np.float32(stack.band)), grid.cell, grid.dz[box[0]])
+    sides = (1,) if settled else BOTH
+    out[box] = redistance(near, grid.cell, grid.cell, grid.z[box[0]], stack.band, sides)
     return np.ascontiguousarray(t.on_grid(out))
 
 

@@ -35,8 +35,7 @@ def recut_surface(grid: Grid, films: Sequence[Film], topology: Topology, old: np
     inside = topology.on_grid(inside)
     solid = code >= 0
     new[solid] = -np.maximum(inside[solid], 1e-6)
-    marched = redistance(new, grid.cell, grid.cell, grid.z, band)
-    new = np.where(solid, marched, new)
+    new = redistance(new, grid.cell, grid.cell, grid.z, band, sides=(-1,))
     far = (np.minimum(np.abs(new), np.abs(old)) >= band) & ((new < 0) == (old < 0))
     same = far | (np.abs(new - old) < SAME * grid.cell)
     return np.where(same, old, new)

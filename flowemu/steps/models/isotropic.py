@@ -114,7 +114,7 @@ class Arrival:
             outside = distance_outside(stack, topology, k)
             value[bare] = time * rate + outside[bare]
             known |= bare
-        return complete(stack, value, known)
+        return complete(stack, value, known, settled=True)
 
 
 def distance_outside(stack: FilmStack, topology: Topology, k: int) -> np.ndarray:
