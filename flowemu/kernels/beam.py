@@ -1,7 +1,8 @@
-"""A directional etch: every column of cells is struck from above on its own.
+"""What a vertical beam meets in the columns of samples, and lengths of films along them.
 
 Times are spent along the columns' edges, whose intervals (see `kernels.regions`) are exact to a
-small fraction of a cell; direction 2 of a sample's edges leads upward.
+small fraction of a cell; direction 2 of a sample's edges leads upward. A thread works on rows of
+columns, plane after plane, so that memory is read in order.
 """
 
 from __future__ import annotations
@@ -25,20 +26,25 @@ def strike(code, row_of, count, start, interval_code, interval_end, zc, slowness
     entry : (ny, nx) float64, um; height at which it first met a solid
     stop : (ny, nx) int32; film it is in or stopped at, -1 if none
     first : (ny, nx) int32; film it met first, -1 if none
+    met : (films, ny, nx) float64, s; when it first met each film, inf where it did not within the budget
     """
     nz, ny, nx = code.shape
     floor = np.full((ny, nx), zc[0])
     entry = np.full((ny, nx), zc[0])
     stop = np.full((ny, nx), -1, np.int32)
     first = np.full((ny, nx), -1, np.int32)
+    met = np.full((slowness.size, ny, nx), np.inf)
     for y in prange(ny):
-        for x in range(nx):
-            used = 0.0
-            alive = True
-            for z in range(nz - 2, -1, -1):
-                i = (z * ny + y) * nx + x
-                s = row_of[i]
-                n = count[s, 2] if s >= 0 else 0
+        used = np.zeros(nx)
+        left = nx
+        z = nz - 2
+        while z >= 0 and left > 0:
+            span = zc[z + 1] - zc[z]
+            for x in range(nx):
+                if stop[y, x] >= 0:
+                    continue
+                s = row_of[(z * ny + y) * nx + x]
+                n = np.int64(count[s, 2]) if s >= 0 else 0
                 high = 1.0
                 for q in range(max(n, 1) - 1, -1, -1):
                     if n > 0:
@@ -48,44 +54,55 @@ def strike(code, row_of, count, start, interval_code, interval_end, zc, slowness
                         c = code[z, y, x]
                         low = 0.0
                     if c >= 0:
-                        span = zc[z + 1] - zc[z]
                         top = zc[z] + high * span
                         if first[y, x] < 0:
                             first[y, x] = c
                             entry[y, x] = top
+                        if met[c, y, x] == np.inf:
+                            met[c, y, x] = used[x]
                         cost = (high - low) * span * slowness[c] if slowness[c] < np.inf else np.inf
-                        if used + cost > budget:
-                            left = budget - used
-                            floor[y, x] = top - (left / slowness[c] if slowness[c] < np.inf else 0.0)
+                        if used[x] + cost > budget:
+                            rest = budget - used[x]
+                            floor[y, x] = top - (rest / slowness[c] if slowness[c] < np.inf else 0.0)
                             stop[y, x] = c
-                            alive = False
+                            left -= 1
                             break
-                        used += cost
+                        used[x] += cost
                     high = low
-                if not alive:
-                    break
-    return floor, entry, stop, first
+            z -= 1
+    return floor, entry, stop, first, met
 
 
 @njit(cache=True, parallel=True)
-def through_times(code, row_of, count, start, interval_code, interval_end, zc, slowness, film, passing):
-    """When the beam reaches and leaves `film` in columns where nothing but `passing` lies above it.
+def through_times(code, row_of, count, start, interval_code, interval_end, zc, slowness, slot, listed):
+    """When the beam reaches and leaves each listed film where nothing but listed films lies above it.
 
-    Returns `(3, ny, nx)` float64: time at its top, time at its bottom, its thickness (um); inf, inf
-    and 0 where the film is not met.
+    Parameters
+    ----------
+    slot : (films,) int64, a film's place among the `listed` ones (their number), or -1
+
+    Returns
+    -------
+    (3, listed, ny, nx) float64
+        Time at the film's top, time at its bottom, its thickness (um), without what lies below
+        another film; inf, inf and 0 where the film is not met.
     """
     nz, ny, nx = code.shape
-    out = np.full((3, ny, nx), np.inf)
+    out = np.full((3, listed, ny, nx), np.inf)
     for y in prange(ny):
-        for x in range(nx):
-            used = 0.0
-            thick = 0.0
-            seen = False
-            done = False
-            for z in range(nz - 2, -1, -1):
-                i = (z * ny + y) * nx + x
-                s = row_of[i]
-                n = count[s, 2] if s >= 0 else 0
+        out[2, :, y, :] = 0.0
+        used = np.zeros(nx)
+        inside = np.full(nx, -1)  # the listed film that the beam was in last
+        alive = np.ones(nx, np.bool_)
+        left = nx
+        z = nz - 2
+        while z >= 0 and left > 0:
+            span = zc[z + 1] - zc[z]
+            for x in range(nx):
+                if not alive[x]:
+                    continue
+                s = row_of[(z * ny + y) * nx + x]
+                n = np.int64(count[s, 2]) if s >= 0 else 0
                 high = 1.0
                 for q in range(max(n, 1) - 1, -1, -1):
                     if n > 0:
@@ -95,156 +112,48 @@ def through_times(code, row_of, count, start, interval_code, interval_end, zc, s
                         c = code[z, y, x]
                         low = 0.0
                     if c >= 0:
-                        length = (high - low) * (zc[z + 1] - zc[z])
-                        if c == film:
-                            if not seen:
-                                out[0, y, x] = used
-                                seen = True
-                            used += length * slowness[c]
-                            thick += length
-                            out[1, y, x] = used
-                        elif seen or passing[c] == 0:
-                            done = True
+                        k = slot[c]
+                        if k < 0:
+                            alive[x] = False
+                            left -= 1
                             break
-                        else:
-                            used += length * slowness[c]
+                        length = (high - low) * span
+                        fresh = out[0, k, y, x] == np.inf
+                        if fresh:
+                            out[0, k, y, x] = used[x]
+                        used[x] += length * slowness[c]
+                        if fresh or inside[x] == k:
+                            out[1, k, y, x] = used[x]
+                            out[2, k, y, x] += length
+                        inside[x] = k
                     high = low
-                if done:
-                    break
-            out[2, y, x] = thick
-    return out
-
-
-@njit(cache=True)
-def _slab_share(ta, tb, fa, fb, has_floor):
-    """Middle of the part of an edge where a film was laid, or -1; from its top and floor at the ends."""
-    low, high = 0.0, 1.0
-    if ta >= 0 and tb >= 0:
-        return -1.0
-    if tb >= 0:
-        high = ta / (ta - tb)
-    elif ta >= 0:
-        low = ta / (ta - tb)
-    if has_floor:
-        if fa < 0 and fb < 0:
-            return -1.0
-        if fa < 0:
-            low = max(low, fa / (fa - fb))
-        elif fb < 0:
-            high = min(high, fa / (fa - fb))
-    return 0.5 * (low + high) if high > low + 1e-3 else -1.0
-
-
-@njit(cache=True, parallel=True)
-def shadow(top, floor, gone, has_floor, zc, row_of, count, start, interval_code, interval_end, film):
-    """Planar distance to the edges of a mask seen from `film` below it, `(nz, ny, nx)` float32.
-
-    At each sample the least value, over the heights above, of the mask's gone field where the mask
-    was laid: positive in its openings, negative under it, inf where none of it lies above. On an
-    edge that holds the film, only what lies above the film counts for the sample below it.
-    """
-    nz, ny, nx = top.shape
-    out = np.full((nz, ny, nx), np.inf, np.float32)
-    for y in prange(ny):
-        for x in range(nx):
-            least = np.inf
-            for z in range(nz - 1, -1, -1):
-                late = np.inf
-                below_film = False
-                if z < nz - 1:
-                    s = row_of[(z * ny + y) * nx + x]
-                    n = count[s, 2] if s >= 0 else 0
-                    film_low = -1.0
-                    for q in range(n):
-                        at = start[s * 7 + 2] + q
-                        if interval_code[at] == film:
-                            film_low = interval_end[at - 1] if q > 0 else 0.0
-                            below_film = q > 0
-                            break
-                    mid = _slab_share(top[z, y, x], top[z + 1, y, x], floor[z, y, x], floor[z + 1, y, x], has_floor)
-                    if mid >= 0:
-                        g = gone[z, y, x] + mid * (gone[z + 1, y, x] - gone[z, y, x])
-                        if mid > film_low:
-                            least = min(least, g)
-                        else:
-                            late = g
-                if top[z, y, x] < 0 and (not has_floor or floor[z, y, x] >= 0):
-                    if below_film:
-                        late = min(late, gone[z, y, x])
-                    else:
-                        least = min(least, gone[z, y, x])
-                out[z, y, x] = least
-                least = min(least, late)
-    return out
-
-
-@njit(cache=True)
-def beside_film(samples, code, count, start, interval_code, strides, film, first, last):
-    """Mark the samples that are not in `film` but have it on an edge of directions first..last-1, `(n,)` bool."""
-    out = np.zeros(code.size, np.bool_)
-    for s in range(samples.size):
-        for d in range(first, last):
-            at = start[s * 7 + d]
-            for q in range(np.int64(count[s, d])):
-                if interval_code[at + q] == film:
-                    for i in (samples[s], samples[s] + strides[d]):
-                        if code[i] != film:
-                            out[i] = True
+            z -= 1
     return out
 
 
 @njit(cache=True, parallel=True)
-def moved_down(top, depth, zc):
-    """A film's top field moved down by `depth (ny, nx)` um, seen from above, `(nz, ny, nx)` float32.
-
-    Seen from above: under an overhang the field of the overhang counts.
-    """
-    nz, ny, nx = top.shape
-    out = np.empty((nz, ny, nx), np.float32)
-    for y in prange(ny):
-        for x in range(nx):
-            seen = np.empty(nz, np.float64)
-            least = np.inf
-            for z in range(nz - 1, -1, -1):
-                least = min(least, top[z, y, x])
-                seen[z] = least
-            for z in range(nz):
-                at = zc[z] + depth[y, x]
-                k = min(np.searchsorted(zc, at), nz - 1)
-                if at >= zc[nz - 1]:
-                    out[z, y, x] = seen[nz - 1] + (at - zc[nz - 1])
-                elif k == 0 or depth[y, x] == 0:
-                    out[z, y, x] = seen[z]
-                else:
-                    s = (at - zc[k - 1]) / (zc[k] - zc[k - 1])
-                    out[z, y, x] = seen[k - 1] + s * (seen[k] - seen[k - 1])
-    return out
-
-
-@njit(cache=True, parallel=True)
-def column_thickness(code, row_of, count, start, interval_code, interval_end, zc, film):
-    """Length of `film` in every column, `(ny, nx)` float64 um."""
+def column_thickness(code, row_of, count, start, interval_code, interval_end, zc, films):
+    """Length of every film in every column, `(films, ny, nx)` float64 um."""
     nz, ny, nx = code.shape
-    out = np.zeros((ny, nx))
+    out = np.zeros((films, ny, nx))
     for y in prange(ny):
-        for x in range(nx):
-            total = 0.0
-            for z in range(nz - 1):
-                i = (z * ny + y) * nx + x
-                s = row_of[i]
-                n = count[s, 2] if s >= 0 else 0
-                span = zc[z + 1] - zc[z]
+        for z in range(nz - 1):
+            span = zc[z + 1] - zc[z]
+            for x in range(nx):
+                s = row_of[(z * ny + y) * nx + x]
+                n = np.int64(count[s, 2]) if s >= 0 else 0
                 if n == 0:
-                    if code[z, y, x] == film:
-                        total += span
+                    c = code[z, y, x]
+                    if c >= 0:
+                        out[c, y, x] += span
                     continue
                 at = start[s * 7 + 2]
                 low = 0.0
                 for q in range(n):
-                    if interval_code[at + q] == film:
-                        total += (interval_end[at + q] - low) * span
+                    c = interval_code[at + q]
+                    if c >= 0:
+                        out[c, y, x] += (interval_end[at + q] - low) * span
                     low = interval_end[at + q]
-            out[y, x] = total
     return out
 
 

@@ -91,22 +91,23 @@ def _widen(box, k, x, y, z):
 
 
 @njit(cache=True)
-def film_depth(
-    depth, points, top, floor, gone, has_floor, has_gone, film, box, shared, code, piece, pieces, x0, y0, cell, zc
-):
-    """Raise `depth (m,)` at each point to how deep it lies in one film of the rest, um.
+def point_inside(
+    points, begin, allowed, top, floor, gone, has_floor, has_gone, film, box, shared, code, piece, pieces, x0, y0, cell,
+    zc,
+):  # fmt: skip
+    """A point of `(m, 3)` that lies deeper than `allowed` um in one film of the rest, looked for from `begin` on; or -1.
 
     `box (6,)` is the film's of `film_boxes`. Where the film is `shared` with the body itself, a point counts
     only if a sample of the film beside it belongs to another piece. Points outside the window's sides are carried
     in, as in a mirror.
     """
     nz, ny, nx = top.shape
-    wide_y, wide_x = code.shape[1], code.shape[2]
     low, high = zc[min(max(box[4], 0), nz - 1)], zc[min(max(box[5], 0), nz - 1)]
-    for k in range(points.shape[0]):
+    for m in range(points.shape[0]):
+        k = begin + m if begin + m < points.shape[0] else begin + m - points.shape[0]
         if points[k, 2] >= zc[nz - 1] or points[k, 2] <= zc[0]:
-            if points[k, 2] <= zc[0] and film == 0:
-                depth[k] = max(depth[k], cell)
+            if points[k, 2] <= zc[0] and film == 0 and cell > allowed:
+                return k
             continue
         if points[k, 2] < low or points[k, 2] > high:
             continue
@@ -122,28 +123,25 @@ def film_depth(
         wz = (points[k, 2] - zc[z]) / (zc[z + 1] - zc[z])
         wx = fx - x
         wy = fy - y
-        t = _trilinear(top, z, y, x, wz, wy, wx, z + 1, y1, x1)
-        inside = -t
-        if inside <= depth[k]:
+        if -_trilinear(top, z, y, x, wz, wy, wx, z + 1, y1, x1) <= allowed:
             continue
-        if has_floor:
-            inside = min(inside, _trilinear(floor, z, y, x, wz, wy, wx, z + 1, y1, x1))
-            if inside <= depth[k]:
-                continue
-        if has_gone:
-            inside = min(inside, -_trilinear(gone, z, y, x, wz, wy, wx, z + 1, y1, x1))
-            if inside <= depth[k]:
-                continue
-        if shared:
-            other = False
-            for c in range(8):
-                a = z + (c >> 2)
-                b = min(y + ((c >> 1) & 1), ny - 1)
-                d = min(x + (c & 1), nx - 1)
-                if code[a, b, d] == film:
-                    i = (a * wide_y + b) * wide_x + d
-                    if not _among(pieces, piece[i]):
-                        other = True
-            if not other:
-                continue
-        depth[k] = inside
+        if has_floor and _trilinear(floor, z, y, x, wz, wy, wx, z + 1, y1, x1) <= allowed:
+            continue
+        if has_gone and -_trilinear(gone, z, y, x, wz, wy, wx, z + 1, y1, x1) <= allowed:
+            continue
+        if not shared or _beside_another(film, z, y, x, code, piece, pieces, ny, nx):
+            return k
+    return -1
+
+
+@njit(cache=True)
+def _beside_another(film, z, y, x, code, piece, pieces, ny, nx):
+    """Whether a corner of a cell is in the film but in none of the pieces."""
+    wide_y, wide_x = code.shape[1], code.shape[2]
+    for c in range(8):
+        a = z + (c >> 2)
+        b = min(y + ((c >> 1) & 1), ny - 1)
+        d = min(x + (c & 1), nx - 1)
+        if code[a, b, d] == film and not _among(pieces, piece[(a * wide_y + b) * wide_x + d]):
+            return True
+    return False

@@ -13,7 +13,7 @@ from __future__ import annotations
 from concurrent.futures import ThreadPoolExecutor
 
 import numpy as np
-from numba import get_num_threads, njit
+from numba import get_num_threads, njit, prange
 
 TETRAHEDRA = np.array(
     [(0, 1, 3, 7), (0, 1, 5, 7), (0, 2, 3, 7), (0, 2, 6, 7), (0, 4, 5, 7), (0, 4, 6, 7)], dtype=np.int64
@@ -68,6 +68,53 @@ def _open_codes(base, corner_offsets, row_of, code, count, start, interval_code,
                         mark[c + offset] = 1
                         found = True
     return found
+
+
+@njit(cache=True, parallel=True)
+def contents(cells, corner_offsets, row_of, code, count, start, interval_code, is_open, piece):
+    """What reaches into each cell, `(cells,)` uint64: bit k % 63 for film k, bit 63 for an open void."""
+    n = code.size
+    out = np.zeros(cells.size, np.uint64)
+    for c in prange(cells.size):
+        found = np.uint64(0)
+        for a in range(8):
+            i = cells[c] + corner_offsets[a]
+            if code[i] >= 0 or is_open[piece[i]] != 0:
+                found |= _bit(code[i])
+            s = row_of[i]
+            for b in range(a + 1, 8):
+                if (a & b) == a and count[s, STEP_OF_BITS[b - a]] > 2:
+                    d = STEP_OF_BITS[b - a]
+                    at = start[s * 7 + d]
+                    for q in range(1, np.int64(count[s, d]) - 1):
+                        if interval_code[at + q] >= 0 or is_open[piece[n + at + q]] != 0:
+                            found |= _bit(interval_code[at + q])
+        out[c] = found
+    return out
+
+
+@njit(cache=True)
+def _bit(code):
+    """The bit of a film, or of a void."""
+    return np.uint64(1) << np.uint64(code % 63 if code >= 0 else 63)
+
+
+def cells_between(found: np.ndarray, stage: np.ndarray, source: np.ndarray) -> np.ndarray:
+    """Which cells may hold a face of a staged film with the films that `source` marks or, if none, an open void.
+
+    `found (cells,)` is that of `contents`; `stage` and `source` are as for `bare_triangles`.
+    """
+    films = np.flatnonzero(source[len(source) // 2 :])
+    mine = found & _mask(np.flatnonzero(stage))
+    theirs = found & (_mask(films) if len(films) else np.uint64(1) << np.uint64(63))
+    either = mine | theirs
+    several = (either & (either - np.uint64(1))) != 0
+    return np.flatnonzero((mine != 0) & (theirs != 0) & several)
+
+
+def _mask(films: np.ndarray) -> np.uint64:
+    """The bits of some films together."""
+    return np.bitwise_or.reduce(np.uint64(1) << (films % 63).astype(np.uint64), initial=np.uint64(0))
 
 
 @njit(cache=True)

@@ -1,11 +1,11 @@
 """Where an etch front can go: nodes and their links.
 
-A node is a (sample, film) pair. A film's own samples are nodes; a sample just outside is one too
-where the film is so thin there that it holds at most one sample across, so that fronts run along
-films of any thickness. Nodes link within their film; from film to film fronts pass through the faces
-between them (`kernels.starts`).
+A node is a (sample, film) pair. A film's own samples are nodes; a sample just outside is one too where the film is so
+thin there that it holds at most one sample across, so that fronts run along films of any thickness. Nodes link within
+their film, and to those of a film of the same medium, etched at the same rate, where the two touch on an edge; else
+fronts pass from film to film through the faces between them (`kernels.starts`).
 
-`stage[code]` is 1 for the films that are etched, 0 for the rest.
+`stage[code]` is 1 for the films that are etched, 0 for the rest; `medium[code]` is the first film of the same rate.
 """
 
 from __future__ import annotations
@@ -82,11 +82,30 @@ def lookup(keys, key):
     return low if low < keys.size and keys[low] == key else -1
 
 
+@njit(cache=True)
+def _beyond_contact(i, j, k, d, up, medium, code, row_of, count, start, interval_code):
+    """The film of `k`'s medium that film `k` touches towards j on the edge i-j, and whether it reaches j; -1 for none."""
+    low = i if up else j
+    s = row_of[low]
+    n = np.int64(count[s, d]) if s >= 0 else 0
+    at = start[s * 7 + d] if n > 0 else 0
+    for p in range(n):
+        q = p if up else n - 1 - p
+        following = q + 1 if up else q - 1
+        if interval_code[at + q] == k and 0 <= following < n:
+            c = np.int64(interval_code[at + following])
+            if c >= 0 and c != k and medium[c] == medium[k]:
+                return c, p == n - 2 and c == code[j]
+            return -1, False
+    return -1, False
+
+
 @njit(cache=True, parallel=True)
-def link(node_sample, node_film, own, keys, first_thin, code, films, shape, row_of):
-    """Neighbour table of the nodes, `(n, 6)` int32 in the order -x, +x, -y, +y, -z, +z; -1 for none."""
+def link(node_sample, node_film, own, keys, first_thin, code, medium, shape, row_of, count, start, interval_code):
+    """Neighbour table of the nodes, `(n + 1, 6)` int32 in the order -x, +x, -y, +y, -z, +z; -1 for none, as in the last row."""
     nz, ny, nx = shape
-    nbr = np.full((node_sample.size, 6), -1, np.int32)
+    films = medium.size
+    nbr = np.full((node_sample.size + 1, 6), -1, np.int32)
     for a in prange(node_sample.size):
         i = node_sample[a]
         m = node_film[a]
@@ -102,14 +121,23 @@ def link(node_sample, node_film, own, keys, first_thin, code, films, shape, row_
                 continue
             step = 1 if d == 0 else (nx if d == 1 else ny * nx)
             j = i + step if up else i - step
-            if code[j] == m:
+            if code[j] == m and code[i] == m:
                 nbr[a, k] = own[j]
                 continue
-            if row_of[j] >= 0:
+            if row_of[j] < 0:
+                continue
+            c, reaches = _beyond_contact(i, j, m, d, up, medium, code, row_of, count, start, interval_code)
+            if reaches:
+                nbr[a, k] = own[j]
+                continue
+            p = lookup(keys, j * films + c) if c >= 0 else -1
+            if p < 0 and code[j] == m:
+                nbr[a, k] = own[j]
+                continue
+            if p < 0:
                 p = lookup(keys, j * films + m)
-                if p >= 0:
-                    nbr[a, k] = first_thin + p
-                    continue
+            if p >= 0:
+                nbr[a, k] = first_thin + p
     return nbr
 
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from concurrent.futures import ThreadPoolExecutor
 
 import numpy as np
-from numba import njit
+from numba import njit, prange
 
 from flowemu.kernels.march import arrival_on_grid
 
@@ -14,7 +14,13 @@ BOTH = (1, -1)
 
 
 def redistance(
-    field: np.ndarray, dx: float, dy: float, z_centres: np.ndarray, band: float, sides: tuple[int, ...] = BOTH
+    field: np.ndarray,
+    dx: float,
+    dy: float,
+    z_centres: np.ndarray,
+    band: float,
+    sides: tuple[int, ...] = BOTH,
+    valid: np.ndarray | None = None,
 ) -> np.ndarray:
     """Signed distance within a band, from the samples that straddle a crossing.
 
@@ -26,6 +32,8 @@ def redistance(
     z_centres : (nz,) um, rising
     band : float, um
     sides : 1 for the positive side, -1 for the negative one; the other keeps its values
+    valid : (nz, ny, nx) bool
+        The samples that count, all if left out; the others make no crossing and come out as those beyond the band.
 
     Returns
     -------
@@ -39,17 +47,19 @@ def redistance(
     out = field.copy()
     for side in sides:
         out[(np.abs(field) < band) & ((field < 0) == (side < 0))] = side * np.float32(band)
-    planes = _crossed_planes(field)
+    valid = np.ones(field.shape, np.bool_) if valid is None else np.ascontiguousarray(valid)
+    planes = np.flatnonzero(_crossed_planes(field, valid))
     if not planes.size:
         return out
     low, high = np.searchsorted(z_centres, [z_centres[planes[0]] - band, z_centres[planes[-1]] + band])
     near = slice(max(0, int(low) - 1), int(high) + 1)
-    _redistance_planes(field[near], dx, dy, z_centres[near], band, sides, out[near])
+    _redistance_planes(field[near], valid[near], dx, dy, z_centres[near], band, sides, out[near])
     return out
 
 
 def _redistance_planes(
     field: np.ndarray,
+    valid: np.ndarray,
     dx: float,
     dy: float,
     z_centres: np.ndarray,
@@ -58,13 +68,13 @@ def _redistance_planes(
     out: np.ndarray,
 ) -> None:
     """The same for a run of planes, into `out`, which holds what goes beyond the band."""
-    fixed = _straddling(field)
+    fixed = _straddling(field, valid)
     out[fixed] = field[fixed]
 
     def march(sign: int) -> None:
         side = np.float32(sign)
         start, slowness = np.empty_like(field), np.empty_like(field)
-        _begin_side(field.reshape(-1), fixed.reshape(-1), side, start.reshape(-1), slowness.reshape(-1))
+        _begin_side(field.reshape(-1), fixed.reshape(-1), valid.reshape(-1), side, start.reshape(-1), slowness.reshape(-1))
         distance = arrival_on_grid(start, slowness, dx, dy, z_centres, band)
         _end_side(field.reshape(-1), fixed.reshape(-1), side, distance.reshape(-1), out.reshape(-1))
 
@@ -101,42 +111,59 @@ def extend_distance(
     return arrival_on_grid(np.where(open_space, near, np.float32(np.nan)), slowness, dx, dy, z_centres, limit)
 
 
-def _crossed_planes(field: np.ndarray) -> np.ndarray:
-    """Numbers of the planes that hold both signs, or another sign than the next plane's or the last one's."""
-    inside = (field < 0).reshape(len(field), -1)
-    some, full = np.asarray(inside.any(axis=1)), np.asarray(inside.all(axis=1))
-    crossed = some & ~full
-    changes = some[1:] != some[:-1]
-    crossed[1:] |= changes
-    crossed[:-1] |= changes
-    return np.flatnonzero(crossed)
+@njit(cache=True, parallel=True)
+def _crossed_planes(field, valid):
+    """Planes that hold a valid sample next to one of the other sign, `(nz,)` bool."""
+    nz, ny, nx = field.shape
+    crossed = np.zeros(nz, np.bool_)
+    for plane in prange(nz):
+        k = np.int64(plane)
+        low, high = max(k - 1, 0), min(k + 1, nz - 1)
+        found = False
+        for j in range(ny):
+            if found:
+                break
+            for i in range(nx):
+                if not valid[k, j, i]:
+                    continue
+                inside = field[k, j, i] < 0.0
+                found |= i > 0 and valid[k, j, i - 1] and (field[k, j, i - 1] < 0.0) != inside
+                found |= j > 0 and valid[k, j - 1, i] and (field[k, j - 1, i] < 0.0) != inside
+                found |= valid[low, j, i] and (field[low, j, i] < 0.0) != inside
+                found |= valid[high, j, i] and (field[high, j, i] < 0.0) != inside
+        crossed[k] = found
+    return crossed
 
 
-@njit(cache=True, nogil=True)
-def _straddling(field):
-    """Samples with one of the six neighbours on the other side, `(nz, ny, nx)` bool."""
+@njit(cache=True, parallel=True)
+def _straddling(field, valid):
+    """Valid samples with one of the six neighbours, valid too, on the other side, `(nz, ny, nx)` bool."""
     nz, ny, nx = field.shape
     found = np.zeros(field.shape, np.bool_)
-    for k in range(nz):
+    for plane in prange(nz):
+        k = np.int64(plane)
         for j in range(ny):
             for i in range(nx):
+                if not valid[k, j, i]:
+                    continue
                 inside = field[k, j, i] < 0.0
-                if i > 0 and (field[k, j, i - 1] < 0.0) != inside:
-                    found[k, j, i] = found[k, j, i - 1] = True
-                if j > 0 and (field[k, j - 1, i] < 0.0) != inside:
-                    found[k, j, i] = found[k, j - 1, i] = True
-                if k > 0 and (field[k - 1, j, i] < 0.0) != inside:
-                    found[k, j, i] = found[k - 1, j, i] = True
+                here = i > 0 and valid[k, j, i - 1] and (field[k, j, i - 1] < 0.0) != inside
+                here |= i + 1 < nx and valid[k, j, i + 1] and (field[k, j, i + 1] < 0.0) != inside
+                here |= j > 0 and valid[k, j - 1, i] and (field[k, j - 1, i] < 0.0) != inside
+                here |= j + 1 < ny and valid[k, j + 1, i] and (field[k, j + 1, i] < 0.0) != inside
+                here |= k > 0 and valid[k - 1, j, i] and (field[k - 1, j, i] < 0.0) != inside
+                here |= k + 1 < nz and valid[k + 1, j, i] and (field[k + 1, j, i] < 0.0) != inside
+                found[k, j, i] = here
     return found
 
 
 @njit(cache=True, nogil=True)
-def _begin_side(field, fixed, side, start, slowness):
-    """Starts of one side: straddling samples of both sides are fixed, the other side is blocked."""
+def _begin_side(field, fixed, valid, side, start, slowness):
+    """Starts of one side: straddling samples of both sides are fixed, the other side and what is not valid blocked."""
     for i in range(field.size):
         own = (field[i] < 0.0) == (side < 0.0)
         start[i] = side * field[i] if fixed[i] else np.inf
-        slowness[i] = 1.0 if own and not fixed[i] else np.inf
+        slowness[i] = 1.0 if own and valid[i] and not fixed[i] else np.inf
 
 
 @njit(cache=True, nogil=True)

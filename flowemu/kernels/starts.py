@@ -75,8 +75,10 @@ def _closest(px, py, pz, triangles, q):
 
 
 @njit(cache=True)
-def _sees(px, py, pz, qx, qy, qz, film, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid):
-    """Whether the straight line from p to the face at q runs through the film, or void, alone.
+def _sees(
+    px, py, pz, qx, qy, qz, film, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid
+):  # fmt: skip
+    """Whether the straight line from p to the face at q runs through films of one medium, or void, alone.
 
     Codes along it come from the fields between the samples (trilinear); `mid (fields,)` is scratch.
     """
@@ -102,7 +104,7 @@ def _sees(px, py, pz, qx, qy, qz, film, code, cell_mixed, row_of, values, ti, bi
                 for f in range(mid.size):
                     mid[f] += w * values[r, f]
             here = _code_of(mid, ti, bi, gi)
-        if here >= 0 and here != film:
+        if here >= 0 and medium[here] != medium[film]:
             return False
     return True
 
@@ -116,7 +118,7 @@ def _gap(p, low, high):
 @njit(cache=True)
 def _earliest(
     px, py, pz, x, y, z, reach, film, slow, known, open_only, bare_of, box, first, triangles, films_of, base_time,
-    least_base, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid,
+    least_base, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid,
 ):  # fmt: skip
     """The earliest start before `known` for a node at p by sample (x, y, z): time, place on a face, and shell.
 
@@ -151,8 +153,8 @@ def _earliest(
                         if start >= best:
                             continue
                         if open_only and r > 0 and not _sees(
-                            px, py, pz, qx, qy, qz, film, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx,
-                            dy, mid,
+                            px, py, pz, qx, qy, qz, film, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape,
+                            zc, dx, dy, mid,
                         ):  # fmt: skip
                             continue
                         best = start
@@ -164,7 +166,7 @@ def _earliest(
 @njit(cache=True, parallel=True)
 def nearest_starts(
     nodes, node_sample, node_film, place, reach, bare_of, box, first, triangles, films_of, base_time, least_base,
-    slowness, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, time, beyond,
+    slowness, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, time, beyond,
 ):  # fmt: skip
     """Lower `time` of the listed nodes to the earliest start at a bare triangle within reach.
 
@@ -184,11 +186,12 @@ def nearest_starts(
         for open_only in (False, True):  # the nearest face of all is mostly one that the node sees
             best, qx, qy, qz, found = _earliest(
                 px, py, pz, x, y, z, np.int64(reach[k]), film, slowness[a], time[a], open_only, bare_of, box, first,
-                triangles, films_of, base_time, least_base, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc,
+                triangles, films_of, base_time, least_base, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc,
                 dx, dy, mid,
             )  # fmt: skip
             if open_only or found <= 0 or _sees(
-                px, py, pz, qx, qy, qz, film, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid
+                px, py, pz, qx, qy, qz, film, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy,
+                mid,
             ):  # fmt: skip
                 break
         if found < 0:
@@ -266,7 +269,7 @@ def sample_reach(cells, partly, shape):
 
 @njit(cache=True)
 def mark_ends(cells, bare_of, cell_mixed, code, corner_offsets, stage, strides, partly):
-    """Mark as partly bare the cells with triangles that have a neighbour, of the same films, without any."""
+    """Mark as partly bare those of the cells that have a neighbour, of the same films, that is not numbered."""
     for c in range(cells.size):
         for d in range(6):
             other = cells[c] + (strides[d // 2] if d % 2 else -strides[d // 2])

@@ -134,23 +134,85 @@ def gather(field: np.ndarray, sign: float, iz: int, iy: int, ix: int, corners: n
 
 
 @njit(cache=True)
-def _range_of_row(field: np.ndarray, sign: float, iz: int, iy: int, low: np.ndarray, high: np.ndarray) -> float:
-    """Least and greatest value of a field over the four samples at each x of a row of cubes; the least of all."""
-    nz, ny, nx = field.shape
-    if nx < low.size:  # a single value that holds everywhere
-        low[:] = sign * field[0, 0, 0]
-        high[:] = sign * field[0, 0, 0]
-        return sign * field[0, 0, 0]
-    z0, z1 = max(iz - 1, 0), min(iz, nz - 1)
-    y0, y1 = max(iy - 1, 0), min(iy, ny - 1)
-    least = np.inf
+def _field_share(field: np.ndarray, sign: float, iz: int, iy: int, ix: int, corners: np.ndarray) -> float:
+    """Share of a cube in which one field is negative; `corners (8, 3)` is scratch."""
+    gather(field, sign, iz, iy, ix, corners, 0)
+    total = 0.0
+    for n in range(6):
+        a, b = corners[TETRAHEDRA[n, 0], 0], corners[TETRAHEDRA[n, 1], 0]
+        c, d = corners[TETRAHEDRA[n, 2], 0], corners[TETRAHEDRA[n, 3], 0]
+        total += below_share(a, b, c, d)
+    return total / 6.0
+
+
+@njit(cache=True)
+def _some_below(plane: np.ndarray) -> bool:
+    """Whether a plane `(ny, nx)` has a negative sample."""
+    for y in range(plane.shape[0]):
+        some = np.uint8(0)
+        for x in range(plane.shape[1]):  # no way out of this loop, so that it runs on several samples at once
+            some |= np.uint8(plane[y, x] < np.float32(0))
+        if some:
+            return True
+    return False
+
+
+@njit(cache=True)
+def _some_above(plane: np.ndarray) -> bool:
+    """Whether a plane `(ny, nx)` has a positive sample."""
+    for y in range(plane.shape[0]):
+        some = np.uint8(0)
+        for x in range(plane.shape[1]):
+            some |= np.uint8(plane[y, x] > np.float32(0))
+        if some:
+            return True
+    return False
+
+
+@njit(cache=True, parallel=True)
+def _inside_planes(top: np.ndarray, floor: np.ndarray, gone: np.ndarray) -> np.ndarray:
+    """Planes in which `top < 0`, `floor > 0` and `gone < 0` somewhere, each for itself, `(nz, 3)` bool."""
+    nz = top.shape[0]
+    found = np.zeros((nz, 3), np.bool_)
+    for plane in prange(nz):
+        z = np.int64(plane)
+        found[z, 0] = _some_below(top[z])
+        found[z, 1] = _some_above(floor[min(z, floor.shape[0] - 1)])
+        found[z, 2] = _some_below(gone[min(z, gone.shape[0] - 1)])
+    return found
+
+
+@njit(cache=True)
+def _enter_sides(row: np.ndarray, field: np.ndarray, sign: float, z: int, y: int, bit: int) -> None:
+    """Enter into the `row (nx,)` of a field's samples, as bits, which sides of zero they are on.
+
+    From `bit` on: negative, positive, zero.
+    """
+    nx = row.size
+    if field.size == 1:
+        row |= np.uint16((1 if sign * field[0, 0, 0] < 0 else 2) << bit)
+        return
     for x in range(nx):
-        a, b = sign * field[z0, y0, x], sign * field[z0, y1, x]
-        c, d = sign * field[z1, y0, x], sign * field[z1, y1, x]
-        low[x] = min(min(a, b), min(c, d))
-        high[x] = max(max(a, b), max(c, d))
-        least = min(least, low[x])
-    return least
+        v = sign * field[z, y, x]
+        row[x] |= np.uint16((1 if v < 0 else (2 if v > 0 else 4)) << bit)
+
+
+@njit(cache=True)
+def _cube_volume(
+    top: np.ndarray, floor: np.ndarray, gone: np.ndarray, sides: int, iz: int, iy: int, ix: int,
+    corners: np.ndarray, values: np.ndarray, work: np.ndarray, sizes: np.ndarray, level: np.ndarray,
+) -> float:  # fmt: skip
+    """Share of a cube that some field crosses, from the sides that its corners are on; the rest is scratch."""
+    if sides & (2 | 48 | 384) == 2:
+        return _field_share(top, 1.0, iz, iy, ix, corners)
+    if sides & (6 | 16 | 384) == 16:
+        return _field_share(floor, -1.0, iz, iy, ix, corners)
+    if sides & (6 | 48 | 128) == 128:
+        return _field_share(gone, 1.0, iz, iy, ix, corners)
+    gather(top, 1.0, iz, iy, ix, corners, 0)
+    gather(floor, -1.0, iz, iy, ix, corners, 1)
+    gather(gone, 1.0, iz, iy, ix, corners, 2)
+    return cube_share(corners, values, work, sizes, level)
 
 
 @njit(cache=True, parallel=True)
@@ -172,30 +234,37 @@ def row_volumes(
     """
     nz, ny, nx = top.shape
     out = np.zeros(ny + 1)
+    here = _inside_planes(top, floor, gone)
+    full = np.empty(nz + 1, np.bool_)  # layers of cubes that may hold something
+    for iz in range(nz + 1):
+        full[iz] = (here[max(iz - 1, 0)] | here[min(iz, nz - 1)]).all()
     for row in prange(ny + 1):
         iy = np.int64(row)
-        low, high = np.empty((3, nx)), np.empty((3, nx))
         corners, values = np.empty((8, 3)), np.empty((4, 3))
         work, sizes, level = np.empty((DEEPEST, 4, 3)), np.empty(DEEPEST), np.empty(DEEPEST, dtype=np.int64)
+        sides = np.zeros((2, nx), np.uint16)  # of the two planes of a layer of cubes
+        known = -1  # the plane in sides[1]
         total = 0.0
         for iz in range(nz + 1):
-            if _range_of_row(top, 1.0, iz, iy, low[0], high[0]) >= 0.0:
+            if not full[iz]:
                 continue
-            if _range_of_row(floor, -1.0, iz, iy, low[1], high[1]) >= 0.0:
-                continue
-            if _range_of_row(gone, 1.0, iz, iy, low[2], high[2]) >= 0.0:
-                continue
+            for z in (max(iz - 1, 0), min(iz, nz - 1)):
+                sides[0] = sides[1]
+                if z != known:
+                    sides[1] = 0
+                    for y in (max(iy - 1, 0), min(iy, ny - 1)):
+                        _enter_sides(sides[1], top, 1.0, z, y, 0)
+                        _enter_sides(sides[1], floor, -1.0, z, y, 3)
+                        _enter_sides(sides[1], gone, 1.0, z, y, 6)
+                    known = z
             for ix in range(nx + 1):
                 a, b = max(ix - 1, 0), min(ix, nx - 1)
-                lowest = max(min(low[0, a], low[0, b]), min(low[1, a], low[1, b]), min(low[2, a], low[2, b]))
-                if lowest >= 0.0:
+                cube = np.int64(sides[0, a] | sides[0, b] | sides[1, a] | sides[1, b])
+                if cube & 73 != 73:  # some field is negative at no corner
                     continue
                 volume = dx[ix] * dy[iy] * dz[iz]
-                if max(high[0, a], high[0, b], high[1, a], high[1, b], high[2, a], high[2, b]) > 0.0:
-                    gather(top, 1.0, iz, iy, ix, corners, 0)
-                    gather(floor, -1.0, iz, iy, ix, corners, 1)
-                    gather(gone, 1.0, iz, iy, ix, corners, 2)
-                    volume *= cube_share(corners, values, work, sizes, level)
+                if cube & 146:  # some field is positive at a corner
+                    volume *= _cube_volume(top, floor, gone, cube, iz, iy, ix, corners, values, work, sizes, level)
                 total += volume
         out[iy] = total
     return out

@@ -46,13 +46,16 @@ def wafer_body(t: Topology) -> int:
 
 
 def _pieces_of(t: Topology) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Film, piece root and body root of every sample and inner interval in a film."""
-    solid = np.flatnonzero(t.code.reshape(-1) >= 0)
-    inner = t.inner
-    thin = inner.node[inner.code >= 0]
-    film = np.concatenate([t.code.reshape(-1)[solid], inner.code[inner.code >= 0]])
-    node = np.concatenate([solid, thin])
-    return film, t.piece[node], t.body[node]
+    """Film, root and body root of every piece of film."""
+    n = t.code.size
+    thin = t.inner.node
+    roots = np.concatenate(
+        [np.flatnonzero(t.piece[:n] == np.arange(n, dtype=t.piece.dtype)), thin[t.piece[thin] == thin]]
+    )
+    inner = roots >= n
+    film = np.concatenate([t.code.reshape(-1)[roots[~inner]], t.interval_code[roots[inner] - n]])
+    solid = film >= 0
+    return film[solid], roots[solid], t.body[roots[solid]]
 
 
 def piece_at(stack: FilmStack, film: str | None, x: float, y: float) -> tuple[int, int, int] | None:

@@ -59,22 +59,25 @@ def _at(stack: FilmStack, field: np.ndarray, x: float, y: float) -> np.ndarray:
     return (1 - wy) * low + wy * high
 
 
+def column_edges(stack: FilmStack) -> tuple[np.ndarray, ...]:
+    """What the kernels of `kernels.beam` need of the stack, in their order."""
+    t = stack.topology
+    return t.code, t.row_of, t.count, t.start, t.interval_code, t.interval_end, stack.grid.z
+
+
+def thickness_maps(stack: FilmStack) -> np.ndarray:
+    """Total vertical thickness of every film in every column, `(films, ny, nx)` um."""
+    _, ny, nx = stack.grid.shape
+    return beam.column_thickness(*column_edges(stack), len(stack.films))[:, :ny, :nx]
+
+
 def thickness_map(stack: FilmStack, k: int) -> np.ndarray:
     """Total vertical thickness of film `k` in every column, `(ny, nx)` um."""
-    t = stack.topology
-    out = beam.column_thickness(
-        t.code, t.row_of, t.count, t.start, t.interval_code, t.interval_end, stack.grid.z, k
-    )
-    _, ny, nx = stack.grid.shape
-    return out[:ny, :nx]
+    return thickness_maps(stack)[k]
 
 
 def topmost(stack: FilmStack) -> np.ndarray:
     """Number of the film seen from above in every column, -1 for none, `(ny, nx)` int32."""
-    t = stack.topology
-    stopping = np.full(len(stack.films), np.inf)
-    first = beam.strike(
-        t.code, t.row_of, t.count, t.start, t.interval_code, t.interval_end, stack.grid.z, stopping, 0.0
-    )[3]
     _, ny, nx = stack.grid.shape
-    return first[:ny, :nx]
+    stopping = np.full(len(stack.films), np.inf)
+    return beam.strike(*column_edges(stack), stopping, 0.0)[3][:ny, :nx]

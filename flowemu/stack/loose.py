@@ -56,7 +56,8 @@ class Obstacle:
         self.boxes = kernel.film_boxes(
             t.samples, t.code, t.count, t.start, t.interval_code, t.strides, len(stack.films)
         )
-        self.order = list(self.shared)  # the film that was run into last comes first
+        self.order = list(self.shared)  # the film and the point that ran into the rest last are tried first
+        self.hit = 0
 
     def _shared_films(self) -> dict[int, bool]:
         """Films of the rest, and whether the body holds pieces of the same film."""
@@ -74,17 +75,17 @@ class Obstacle:
     def touches(self, points: np.ndarray) -> bool:
         """Whether one of these points lies deeper in the rest than is allowed."""
         grid, t = self.stack.grid, self.stack.topology
-        allowed = ALLOWED * grid.cell
-        depth = np.full(len(points), allowed)
         for k in self.order:
             film = self.stack.films[k]
             floor = film.top if film.floor is None else film.floor
             gone = film.top if film.gone is None else film.gone
-            kernel.film_depth(
-                depth, points, film.top, floor, gone, film.floor is not None, film.gone is not None, k, self.boxes[k],
-                self.shared[k], t.code, t.piece, self.pieces, grid.x[0], grid.y[0], grid.cell, grid.z,
+            found = kernel.point_inside(
+                points, min(self.hit, len(points) - 1), ALLOWED * grid.cell, film.top, floor, gone,
+                film.floor is not None, film.gone is not None, k, self.boxes[k], self.shared[k], t.code, t.piece,
+                self.pieces, grid.x[0], grid.y[0], grid.cell, grid.z,
             )  # fmt: skip
-            if depth.max(initial=0.0) > allowed:
+            if found >= 0:
+                self.hit = found
                 self.order = [k, *(other for other in self.order if other != k)]
                 return True
         return False
@@ -203,6 +204,8 @@ def _turns_out(obstacle: Obstacle, play: tuple[float | None, ...]) -> bool:
             turn = direction * 2 * np.pi * k / TURNS
             if obstacle.blocked(np.zeros(3), turn):
                 break
+            if play[5] is not None and obstacle.blocked(np.array([0.0, 0.0, min(play[5] + pitch, top)]), turn):
+                continue
             rise = pitch
             while rise < top and not obstacle.blocked(np.array([0.0, 0.0, rise]), turn):
                 rise += pitch

@@ -14,7 +14,7 @@ RINGS = int(BAND) + 1
 
 
 def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray, settled: bool = False) -> np.ndarray:
-    """A removed field over the grid, `(nz, ny, nx)` float32 um, positive where the film goes.
+    """A removed field over the grid, `(nz, ny, nx)` float32 um, positive where the film goes; the band if all of it does.
 
     Parameters
     ----------
@@ -24,18 +24,19 @@ def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray, settled: bo
         Whether what stays, the negative side, holds distances already, as a front's times make them. All else is made
         so, except where it changes sign.
     """
-    t, grid = stack.topology, stack.grid
-    value = value.reshape(t.code.shape).astype(np.float32)
+    t, grid, band = stack.topology, stack.grid, np.float32(stack.band)
+    value = value.reshape(t.code.shape)
     known = known.reshape(t.code.shape)
-    out = np.full(t.code.shape, -np.float32(stack.band), np.float32)
-    if not known.any():
-        return np.ascontiguousarray(t.on_grid(out))
-    box = _box(known)
-    near = np.ascontiguousarray(value[box])
-    ring = carried(near, known[box], grid.z[box[0]], grid.cell, RINGS)
-    near = _level(np.where(ring < UNKNOWN, near, -np.float32(stack.band)), grid.cell, grid.dz[box[0]])
-    sides = (1,) if settled else BOTH
-    out[box] = redistance(near, grid.cell, grid.cell, grid.z[box[0]], stack.band, sides)
+    stays = bool(np.any(value[known] < 0)) or not known.any()
+    out = np.full(t.code.shape, -band if stays else band, np.float32)
+    if stays and known.any():
+        box = _box(known)
+        near = value[box].astype(np.float32)
+        ring = carried(near, known[box], grid.z[box[0]], grid.cell, RINGS)
+        there = ring < UNKNOWN
+        near = _level(np.where(there, near, -band), grid.cell, grid.dz[box[0]])
+        sides = (1,) if settled else BOTH
+        out[box] = redistance(near, grid.cell, grid.cell, grid.z[box[0]], stack.band, sides, there)
     return np.ascontiguousarray(t.on_grid(out))
 
 

@@ -37,14 +37,14 @@ class FilmStack:
 
     Attributes
     ----------
-    surface : (nz, ny, nx) float32, um
-        Signed distance to the solid's surface, negative inside; what the next film will lie on.
-        Solid or void thinner than a cell shows in the films and not here.
+    laid : (nz, ny, nx) float32, um
+        The surface when it was last made, and `cut` whether something has been taken away since.
     """
 
     grid: Grid
     films: tuple[Film, ...]
-    surface: np.ndarray
+    laid: np.ndarray
+    cut: bool = False
 
     @classmethod
     def bare(cls, grid: Grid, material: str, state: str | None = None) -> FilmStack:
@@ -59,6 +59,17 @@ class FilmStack:
         from flowemu.stack.topology import Topology
 
         return Topology.of(self.grid, self.films)
+
+    @cached_property
+    def surface(self) -> np.ndarray:
+        """Signed distance to the solid's surface, `(nz, ny, nx)` float32 um, negative inside; the next film lies on it.
+
+        Solid or void thinner than a cell shows in the films and not here. It is made when first asked for, as most
+        stacks that something was taken from never carry a film.
+        """
+        from flowemu.stack.surfaces import recut_surface
+
+        return recut_surface(self.grid, self.films, self.topology, self.laid) if self.cut else self.laid
 
     @property
     def band(self) -> float:
@@ -84,17 +95,20 @@ class FilmStack:
         nothing are dropped. Where nothing is taken the very same stack comes back.
         """
         films = list(self.films)
-        changed = False
+        changed, whole = False, set()
         for k, field in removed.items():
             film = films[k]
             if not bool(np.any(field > 0)):
                 continue
-            if skims(film, field, self.grid.cell):
+            if k > 0 and bool(np.all(field > 0)):
+                whole.add(k)
+            elif skims(film, field, self.grid.cell):
                 films[k] = replace(film, top=np.maximum(film.top, field))
             else:
                 films[k] = replace(film, gone=field if film.gone is None else np.maximum(film.gone, field))
             changed = True
-        return watch(self, self._recut(films), "carve", set(removed)) if changed else self
+        left = [film for k, film in enumerate(films) if k not in whole]
+        return watch(self, self._recut(left), "carve", set(removed)) if changed else self
 
     def without(self, numbers: set[int]) -> FilmStack:
         """The stack with whole films taken away."""
@@ -111,17 +125,24 @@ class FilmStack:
             gone=region if old.gone is None else np.maximum(old.gone, region),
         )
         rest = replace(old, gone=outside if old.gone is None else np.maximum(old.gone, outside))
-        return FilmStack(self.grid, (*self.films[:k], rest, part, *self.films[k + 1 :]), self.surface)
+        return self._with((*self.films[:k], rest, part, *self.films[k + 1 :]))
 
     def turned(self, k: int, **changes: object) -> FilmStack:
         """Film `k` with another material or state, the geometry untouched."""
         films = list(self.films)
         films[k] = replace(films[k], **changes)  # type: ignore[arg-type]
-        return FilmStack(self.grid, tuple(films), self.surface)
+        return self._with(tuple(films))
+
+    @property
+    def _last_surface(self) -> np.ndarray:
+        return self.surface if "surface" in self.__dict__ else self.laid
+
+    def _with(self, films: tuple[Film, ...]) -> FilmStack:
+        """Other films of the same shape."""
+        return FilmStack(self.grid, films, self._last_surface, self.cut and "surface" not in self.__dict__)
 
     def _recut(self, films: list[Film]) -> FilmStack:
         from flowemu.stack.measure import film_volume
-        from flowemu.stack.surfaces import recut_surface
         from flowemu.stack.topology import Topology
 
         films = [film for k, film in enumerate(films) if k == 0 or film_volume(film, self.grid) > 0]
@@ -131,6 +152,6 @@ class FilmStack:
         if not present.all():
             films = [film for film, there in zip(films, present, strict=True) if there]
             topology = Topology.of(self.grid, films)
-        stack = FilmStack(self.grid, tuple(films), recut_surface(self.grid, films, topology, self.surface))
+        stack = FilmStack(self.grid, tuple(films), self._last_surface, cut=True)
         stack.__dict__["topology"] = topology
         return stack

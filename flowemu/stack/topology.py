@@ -8,7 +8,7 @@ from functools import cached_property
 
 import numpy as np
 
-from flowemu.kernels import regions
+from flowemu.kernels import faces, regions
 from flowemu.stack.film import Film
 from flowemu.stack.grid import Grid
 
@@ -167,6 +167,13 @@ class Topology:
         return np.unique(roots[top < 0])
 
     @cached_property
+    def is_open(self) -> np.ndarray:
+        """Whether a root is that of an open void, uint8 by root."""
+        out = np.zeros(len(self.piece), np.uint8)
+        out[self.open_roots] = 1
+        return out
+
+    @cached_property
     def open_space(self) -> np.ndarray:
         """Samples in the open space, `code.shape` bool."""
         void = self.code < 0
@@ -187,6 +194,14 @@ class Topology:
         out = np.zeros(self.code.size, bool)
         out[self.cells] = True
         return out
+
+    @cached_property
+    def contents(self) -> np.ndarray:
+        """The films and open voids that reach into each mixed cell, as bits; see `kernels.faces`."""
+        return faces.contents(
+            self.cells, self.corner_offsets, self.row_of, self.code.reshape(-1), self.count, self.start,
+            self.interval_code, self.is_open, self.piece,
+        )  # fmt: skip
 
     @cached_property
     def inner(self) -> InnerIntervals:
