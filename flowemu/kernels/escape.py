@@ -95,7 +95,7 @@ def point_inside(
     points, begin, allowed, top, floor, gone, has_floor, has_gone, film, box, shared, code, piece, pieces, x0, y0, cell,
     zc,
 ):  # fmt: skip
-    """A point of `(m, 3)` that lies deeper than `allowed` um in one film of the rest, looked for from `begin` on; or -1.
+    """Number of a point, `(m, 3)`, deeper than `allowed` um in one film of the rest, looked for from `begin` on; or -1.
 
     `box (6,)` is the film's of `film_boxes`. Where the film is `shared` with the body itself, a point counts
     only if a sample of the film beside it belongs to another piece. Points outside the window's sides are carried

@@ -13,7 +13,7 @@ from __future__ import annotations
 from concurrent.futures import ThreadPoolExecutor
 
 import numpy as np
-from numba import get_num_threads, njit, prange
+from numba import get_num_threads, njit
 
 TETRAHEDRA = np.array(
     [(0, 1, 3, 7), (0, 1, 5, 7), (0, 2, 3, 7), (0, 2, 6, 7), (0, 4, 5, 7), (0, 4, 6, 7)], dtype=np.int64
@@ -68,53 +68,6 @@ def _open_codes(base, corner_offsets, row_of, code, count, start, interval_code,
                         mark[c + offset] = 1
                         found = True
     return found
-
-
-@njit(cache=True, parallel=True)
-def contents(cells, corner_offsets, row_of, code, count, start, interval_code, is_open, piece):
-    """What reaches into each cell, `(cells,)` uint64: bit k % 63 for film k, bit 63 for an open void."""
-    n = code.size
-    out = np.zeros(cells.size, np.uint64)
-    for c in prange(cells.size):
-        found = np.uint64(0)
-        for a in range(8):
-            i = cells[c] + corner_offsets[a]
-            if code[i] >= 0 or is_open[piece[i]] != 0:
-                found |= _bit(code[i])
-            s = row_of[i]
-            for b in range(a + 1, 8):
-                if (a & b) == a and count[s, STEP_OF_BITS[b - a]] > 2:
-                    d = STEP_OF_BITS[b - a]
-                    at = start[s * 7 + d]
-                    for q in range(1, np.int64(count[s, d]) - 1):
-                        if interval_code[at + q] >= 0 or is_open[piece[n + at + q]] != 0:
-                            found |= _bit(interval_code[at + q])
-        out[c] = found
-    return out
-
-
-@njit(cache=True)
-def _bit(code):
-    """The bit of a film, or of a void."""
-    return np.uint64(1) << np.uint64(code % 63 if code >= 0 else 63)
-
-
-def cells_between(found: np.ndarray, stage: np.ndarray, source: np.ndarray) -> np.ndarray:
-    """Which cells may hold a face of a staged film with the films that `source` marks or, if none, an open void.
-
-    `found (cells,)` is that of `contents`; `stage` and `source` are as for `bare_triangles`.
-    """
-    films = np.flatnonzero(source[len(source) // 2 :])
-    mine = found & _mask(np.flatnonzero(stage))
-    theirs = found & (_mask(films) if len(films) else np.uint64(1) << np.uint64(63))
-    either = mine | theirs
-    several = (either & (either - np.uint64(1))) != 0
-    return np.flatnonzero((mine != 0) & (theirs != 0) & several)
-
-
-def _mask(films: np.ndarray) -> np.uint64:
-    """The bits of some films together."""
-    return np.bitwise_or.reduce(np.uint64(1) << (films % 63).astype(np.uint64), initial=np.uint64(0))
 
 
 @njit(cache=True)
@@ -215,18 +168,22 @@ def _one_sided(m, value, mean_in, mean_out, nc):
 
 @njit(cache=True)
 def _bare(value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi):
-    """2 if `film` lies bare to the source at a point of its face, 1 if it is covered there, 0 if it is not there."""
+    """2 if `film` lies bare to the source at a point of its face, 1 if it is covered there, 0 if it is not there.
+
+    With it the code beyond the face.
+    """
     if _code_beside(value, mean_in, cut, nc, negative, ti, bi, gi) != film:
-        return 0
+        return 0, 0
     outer = _code_beside(value, mean_out, cut, nc, negative, ti, bi, gi)
-    return 2 if source[outer + source.size // 2] != 0 else 1
+    return (2 if source[outer + source.size // 2] != 0 else 1), outer
 
 
 @njit(cache=True)
-def _add_triangle(tri, n, points, a, b, c):
+def _add_triangle(tri, outer_of, n, points, a, b, c, outer):
     """Add the triangle of three of the points, if there is room; returns the number of triangles."""
     if n == tri.shape[0]:
         return n
+    outer_of[n] = outer
     for g in range(3):
         tri[n, 0, g] = points[a, g]
         tri[n, 1, g] = points[b, g]
@@ -261,7 +218,9 @@ def _split(poly, size, k, new, g):
 
 
 @njit(cache=True)
-def _cut_up(c, m, corner, value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi, tri, n, thin):
+def _cut_up(
+    c, m, corner, value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi, tri, outer_of, n, thin
+):  # fmt: skip
     """Cut a face along the other fields' surfaces and add its bare pieces.
 
     A piece nowhere deeper than `thin` um beyond a surface is not cut off. Returns the number of triangles.
@@ -290,18 +249,21 @@ def _cut_up(c, m, corner, value, mean_in, mean_out, film, source, cut, nc, negat
             w[h] = 0.0
             for i in range(size[k]):
                 w[h] += poly[k, i, 3 + h] / size[k]
-        if _bare(w, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi) == 2:
+        state, outer = _bare(w, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi)
+        if state == 2:
             for i in range(size[k] - 2):
-                n = _add_triangle(tri, n, poly[k], 0, i + 1, i + 2)
+                n = _add_triangle(tri, outer_of, n, poly[k], 0, i + 1, i + 2, outer)
     return n
 
 
 @njit(cache=True)
 def bare_faces(
-    c, swapped, vals, points, film, source, cut, nc, negative, ti, bi, gi, tri, n, thin, corner, value, mean_in,
-    mean_out,
+    c, swapped, vals, points, film, source, cut, nc, negative, ti, bi, gi, tri, outer_of, n, thin, corner, value,
+    mean_in, mean_out,
 ):  # fmt: skip
     """Add to `tri (most, 3, 3)` the triangles of one field's surface in a tetrahedron where `film` is bare.
+
+    `outer_of (most,)` takes the code beyond each.
 
     Parameters
     ----------
@@ -322,12 +284,14 @@ def bare_faces(
     m = _face(c, vals, points, nc, corner, value)
     _means(c, vals, nc, swapped, mean_in, mean_out)
     if not _one_sided(m, value, mean_in, mean_out, nc):
-        n = _cut_up(c, m, corner, value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi, tri, n, thin)
+        n = _cut_up(
+            c, m, corner, value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi, tri, outer_of, n, thin
+        )
         return n, True
-    state = _bare(value[0], mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi)
+    state, outer = _bare(value[0], mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi)
     if state == 2:
         for t in range(m - 3, -1, -1):
-            n = _add_triangle(tri, n, corner, 0, t + 1, t + 2)
+            n = _add_triangle(tri, outer_of, n, corner, 0, t + 1, t + 2, outer)
     return n, state == 1
 
 
@@ -342,8 +306,8 @@ def _place_of(f, cut, nc):
 
 @njit(cache=True)
 def _film_triangles(
-    film, bx, by, bz, corner_values, cut, nc, negative, here, ti, bi, gi, zc, dx, dy, tri, n, vals, points, corner,
-    value, mean_in, mean_out,
+    film, bx, by, bz, corner_values, cut, nc, negative, here, ti, bi, gi, zc, dx, dy, tri, outer_of, n, vals, points,
+    corner, value, mean_in, mean_out,
 ):  # fmt: skip
     """Add the bare triangles of one film in a cell; returns their number, and whether its bare surface may end here."""
     partly = False
@@ -365,8 +329,8 @@ def _film_triangles(
             below = int(vals[0, c] < 0) + int(vals[1, c] < 0) + int(vals[2, c] < 0) + int(vals[3, c] < 0)
             if 0 < below < 4:
                 n, ends = bare_faces(
-                    c, face == 1, vals, points, film, here, cut, nc, negative, ti, bi, gi, tri, n, THIN * dx, corner,
-                    value, mean_in, mean_out,
+                    c, face == 1, vals, points, film, here, cut, nc, negative, ti, bi, gi, tri, outer_of, n,
+                    THIN * dx, corner, value, mean_in, mean_out,
                 )  # fmt: skip
                 partly |= ends
     return n, partly
@@ -393,7 +357,7 @@ def _triangles_in(
     points, corner = np.empty((4, 3), np.float64), np.empty((4, 3), np.float64)
     mean_in, mean_out = np.empty(nf, np.float64), np.empty(nf, np.float64)
     tri = np.empty((4 * MOST, 3, 3), np.float64)
-    film_of = np.empty(4 * MOST, np.int16)
+    film_of, outer_of = np.empty(4 * MOST, np.int16), np.empty(4 * MOST, np.int16)
     n = np.int64(0)
     for c in range(cells.size):
         base = cells[c]
@@ -412,17 +376,18 @@ def _triangles_in(
             if n + MOST > tri.shape[0]:
                 tri = np.concatenate((tri, np.empty_like(tri)))
                 film_of = np.concatenate((film_of, np.empty_like(film_of)))
+                outer_of = np.concatenate((outer_of, np.empty_like(outer_of)))
             bz, by, bx = base // (ny * nx), (base // nx) % ny, base % nx
             first = n
             n, ends = _film_triangles(
-                film, bx, by, bz, corner_values, cut, nc, negative, here, ti, bi, gi, zc, dx, dy, tri, n, vals, points,
-                corner, value, mean_in, mean_out,
+                film, bx, by, bz, corner_values, cut, nc, negative, here, ti, bi, gi, zc, dx, dy, tri, outer_of, n,
+                vals, points, corner, value, mean_in, mean_out,
             )  # fmt: skip
             film_of[first:n] = film
             if ends and n > first:
                 partly[c] = 1
         number[c] = n - before
-    return tri[:n].copy(), film_of[:n].copy(), number, partly
+    return tri[:n].copy(), film_of[:n].copy(), outer_of[:n].copy(), number, partly
 
 
 def bare_triangles(
@@ -430,7 +395,7 @@ def bare_triangles(
     code: np.ndarray, count: np.ndarray, start: np.ndarray, interval_code: np.ndarray, ti: np.ndarray, bi: np.ndarray,
     gi: np.ndarray, stage: np.ndarray, source: np.ndarray, is_open: np.ndarray, piece: np.ndarray, zc: np.ndarray,
     dx: float, dy: float,
-) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:  # fmt: skip
+) -> tuple[np.ndarray, ...]:  # fmt: skip
     """The bare triangles of staged films in the mixed cells.
 
     The etchant comes from the films that `source` marks; where none is marked, from the voids whose roots `is_open`
@@ -439,13 +404,13 @@ def bare_triangles(
     Returns
     -------
     triangles : (n, 3, 3) float64, um from the first sample in x and y; cell after cell
-    films : (n,) int16
+    films, outer : (n,) int16, the film and the code that it lies bare to
     number : (cells,) int32, how many triangles each cell has
     partly : (cells,) uint8, whether the bare surface of some film may end in the cell
     """
 
-    def run(first: int) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
-        found: tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray] = _triangles_in(
+    def run(first: int) -> tuple[np.ndarray, ...]:
+        found: tuple[np.ndarray, ...] = _triangles_in(
             cells[first : first + RUN], corner_offsets, shape, row_of, values, code, count, start, interval_code, ti,
             bi, gi, stage, source, is_open, piece, zc, dx, dy,
         )  # fmt: skip
@@ -453,5 +418,4 @@ def bare_triangles(
 
     with ThreadPoolExecutor(get_num_threads()) as threads:
         found = list(threads.map(run, range(0, max(len(cells), 1), RUN)))
-    triangles, films, number, partly = (np.concatenate(parts) for parts in zip(*found, strict=True))
-    return triangles, films, number, partly
+    return tuple(np.concatenate(parts) for parts in zip(*found, strict=True))

@@ -84,7 +84,7 @@ def lookup(keys, key):
 
 @njit(cache=True)
 def _beyond_contact(i, j, k, d, up, medium, code, row_of, count, start, interval_code):
-    """The film of `k`'s medium that film `k` touches towards j on the edge i-j, and whether it reaches j; -1 for none."""
+    """The film of `k`'s medium that `k` touches towards j on the edge i-j, -1 for none, and whether it reaches j."""
     low = i if up else j
     s = row_of[low]
     n = np.int64(count[s, d]) if s >= 0 else 0
@@ -102,7 +102,7 @@ def _beyond_contact(i, j, k, d, up, medium, code, row_of, count, start, interval
 
 @njit(cache=True, parallel=True)
 def link(node_sample, node_film, own, keys, first_thin, code, medium, shape, row_of, count, start, interval_code):
-    """Neighbour table of the nodes, `(n + 1, 6)` int32 in the order -x, +x, -y, +y, -z, +z; -1 for none, as in the last row."""
+    """Neighbours of the nodes in the order -x, +x, -y, +y, -z, +z, `(n + 1, 6)` int32; -1: none, as in the last row."""
     nz, ny, nx = shape
     films = medium.size
     nbr = np.full((node_sample.size + 1, 6), -1, np.int32)

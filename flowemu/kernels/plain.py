@@ -1,7 +1,7 @@
 """Etch starts where nothing but one smooth face lies bare: there the film's own field is the distance.
 
-A cell is plain if it holds one film and open voids, and one of the film's fields alone changes sign in it. Far from all other cells with a
-bare face, and from where the bare face ends, its samples need no triangles.
+A cell is plain if it holds one film and open voids, and one of the film's fields alone changes sign in it. Far from all
+other cells with a bare face, and from where the bare face ends, its samples need no triangles.
 """
 
 from __future__ import annotations
@@ -9,14 +9,14 @@ from __future__ import annotations
 import numpy as np
 from numba import njit, prange
 
-OPEN_VOID = np.uint64(1 << 63)  # its bit in `faces.contents`
+from flowemu.kernels.contents import OPEN_VOID
 
 
 @njit(cache=True, parallel=True)
 def plain_fields(cells, found, corner_offsets, row_of, values, code, ti, bi, gi, stage, is_open, piece):
     """The one field that changes sign in each cell, `(cells,)` int64, -1 where the cell is not plain.
 
-    `found (cells,)` is what reaches into each, of `faces.contents`.
+    `found (cells,)` is what reaches into each, of `contents.contents`.
     """
     out = np.full(cells.size, -1, np.int64)
     for c in prange(cells.size):

@@ -9,7 +9,6 @@ from numba import njit, prange
 
 from flowemu.kernels.march import arrival_on_grid
 
-
 BOTH = (1, -1)
 
 
@@ -74,9 +73,9 @@ def _redistance_planes(
     def march(sign: int) -> None:
         side = np.float32(sign)
         start, slowness = np.empty_like(field), np.empty_like(field)
-        _begin_side(field.reshape(-1), fixed.reshape(-1), valid.reshape(-1), side, start.reshape(-1), slowness.reshape(-1))
+        _begin_side(*(a.reshape(-1) for a in (field, fixed, valid, start, slowness)), side)
         distance = arrival_on_grid(start, slowness, dx, dy, z_centres, band)
-        _end_side(field.reshape(-1), fixed.reshape(-1), side, distance.reshape(-1), out.reshape(-1))
+        _end_side(*(a.reshape(-1) for a in (field, fixed, distance, out)), side)
 
     with ThreadPoolExecutor(2) as threads:  # either side writes its own samples, and the loops let go of the lock
         list(threads.map(march, sides))
@@ -158,7 +157,7 @@ def _straddling(field, valid):
 
 
 @njit(cache=True, nogil=True)
-def _begin_side(field, fixed, valid, side, start, slowness):
+def _begin_side(field, fixed, valid, start, slowness, side):
     """Starts of one side: straddling samples of both sides are fixed, the other side and what is not valid blocked."""
     for i in range(field.size):
         own = (field[i] < 0.0) == (side < 0.0)
@@ -167,7 +166,7 @@ def _begin_side(field, fixed, valid, side, start, slowness):
 
 
 @njit(cache=True, nogil=True)
-def _end_side(field, fixed, side, distance, out):
+def _end_side(field, fixed, distance, out, side):
     """Take over what was marched on one side."""
     for i in range(field.size):
         if (field[i] < 0.0) == (side < 0.0) and distance[i] < np.inf and not fixed[i]:

@@ -158,11 +158,12 @@ def _at_height(seen, zc, z, x, depth):
 
 
 @njit(cache=True, parallel=True)
-def moved_down(mark, top, gone, has_gone, depth, zc, low, y0, x0):
+def moved_down(mark, top, gone, has_gone, depth, lateral, shielded, zc, low, y0, x0):
     """A film's top, less what is gone of it, moved down by `depth (by, bx)` um, `(bz, by, bx)` float32.
 
     Seen from above: under an overhang the field of the overhang counts. Samples without a `mark
-    (bz, by, bx)` are left at 0.
+    (bz, by, bx)` are left at 0. In the columns `shielded (by, bx)` from the beam, what is clear of the
+    walls, `lateral (bz, by, bx)` above 0, does not move.
     """
     nz = top.shape[0]
     bz, by, bx = mark.shape
@@ -179,7 +180,8 @@ def moved_down(mark, top, gone, has_gone, depth, zc, low, y0, x0):
         for z in range(bz):
             for a in range(bx):
                 if mark[z, b, a] > 0:
-                    out[z, b, a] = _at_height(seen, zc, z + low, a, depth[b, a])
+                    still = shielded[b, a] and lateral[z, b, a] > 0
+                    out[z, b, a] = _at_height(seen, zc, z + low, a, 0.0 if still else depth[b, a])
     return out
 
 
@@ -244,7 +246,7 @@ def _mean_beside(value, mark, z, y, x):
 
 
 @njit(cache=True, parallel=True)
-def removed_values(mark, below, lateral, cut, band):
+def removed_values(mark, below, lateral, cut, shielded, band):
     """Removed field of a film at its marked samples, `(bz, by, bx)` float32 um, within the band; 0 elsewhere.
 
     Parameters
@@ -252,6 +254,7 @@ def removed_values(mark, below, lateral, cut, band):
     below : (bz, by, bx) float32, um; height above the etched floor
     lateral : (bz, by, bx) float64, um; distance from the wall
     cut : (by, bx) bool; columns in which the film is cut through
+    shielded : (by, bx) bool; columns of the film that the beam did not get to: what is clear of the walls is not cut
 
     A sample that flanks the film takes its distance from the wall from its neighbours: it lies, in
     the step that the film covers, in what would shadow it.
@@ -264,9 +267,10 @@ def removed_values(mark, below, lateral, cut, band):
                 if mark[z, b, a] == 0:
                     continue
                 wall = lateral[z, b, a]
+                through = cut[b, a] and not (shielded[b, a] and wall > 0)
                 if mark[z, b, a] == FLANK:
                     wall = _mean_beside(lateral, mark, z, np.int64(b), a)
-                down = np.float64(np.float32(band) if cut[b, a] else below[z, b, a])
+                down = np.float64(np.float32(band) if through else below[z, b, a])
                 value = -np.hypot(down, wall) if down < 0 and wall < 0 else min(down, wall)
                 out[z, b, a] = min(max(value, -band), band)
     return out

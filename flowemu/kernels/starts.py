@@ -116,6 +116,44 @@ def _gap(p, low, high):
 
 
 @njit(cache=True)
+def _soonest(px, py, pz, triangles, q, base_time, slow):
+    """When a front through triangle q gets to a point, and where on it that comes through.
+
+    Tried are the point of the triangle closest to p, its time between those of the corners, and the corners.
+    """
+    x, y, z = _closest(px, py, pz, triangles, q)
+    level = base_time[q, 0] == base_time[q, 1] and base_time[q, 1] == base_time[q, 2]
+    there = base_time[q, 0] if level else _between(x, y, z, triangles, q, base_time)
+    best = there + np.sqrt((px - x) * (px - x) + (py - y) * (py - y) + (pz - z) * (pz - z)) * slow
+    if level:
+        return best, x, y, z
+    for k in range(3):
+        vx, vy, vz = triangles[q, k, 0], triangles[q, k, 1], triangles[q, k, 2]
+        start = base_time[q, k] + np.sqrt((px - vx) ** 2 + (py - vy) ** 2 + (pz - vz) ** 2) * slow
+        if start < best:
+            best, x, y, z = start, vx, vy, vz
+    return best, x, y, z
+
+
+@njit(cache=True)
+def _between(x, y, z, triangles, q, base_time):
+    """The corners' times between them, at a point of triangle q; +inf where one of them is."""
+    if not base_time[q, 0] + base_time[q, 1] + base_time[q, 2] < np.inf:
+        return np.inf
+    a, b, c = triangles[q, 0], triangles[q, 1], triangles[q, 2]
+    ux, uy, uz = b[0] - a[0], b[1] - a[1], b[2] - a[2]
+    vx, vy, vz = c[0] - a[0], c[1] - a[1], c[2] - a[2]
+    wx, wy, wz = x - a[0], y - a[1], z - a[2]
+    uu, uv, vv = ux * ux + uy * uy + uz * uz, ux * vx + uy * vy + uz * vz, vx * vx + vy * vy + vz * vz
+    wu, wv = wx * ux + wy * uy + wz * uz, wx * vx + wy * vy + wz * vz
+    det = uu * vv - uv * uv
+    if det <= 0.0:
+        return max(base_time[q, 0], base_time[q, 1], base_time[q, 2])
+    s, t = (wu * vv - wv * uv) / det, (wv * uu - wu * uv) / det
+    return base_time[q, 0] * (1 - s - t) + base_time[q, 1] * s + base_time[q, 2] * t
+
+
+@njit(cache=True)
 def _earliest(
     px, py, pz, x, y, z, reach, film, slow, known, open_only, bare_of, box, first, triangles, films_of, base_time,
     least_base, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy, mid,
@@ -145,11 +183,9 @@ def _earliest(
                     if least_base[c] + np.sqrt(gx * gx + gy * gy + gz * gz) * slow >= best:
                         continue
                     for q in range(first[c], first[c + 1]):
-                        if films_of[q] != film or base_time[q] >= best:
+                        if films_of[q] != film or min(base_time[q, 0], base_time[q, 1], base_time[q, 2]) >= best:
                             continue
-                        qx, qy, qz = _closest(px, py, pz, triangles, q)
-                        d = np.sqrt((px - qx) * (px - qx) + (py - qy) * (py - qy) + (pz - qz) * (pz - qz))
-                        start = base_time[q] + d * slow
+                        start, qx, qy, qz = _soonest(px, py, pz, triangles, q, base_time, slow)
                         if start >= best:
                             continue
                         if open_only and r > 0 and not _sees(
@@ -170,7 +206,8 @@ def nearest_starts(
 ):  # fmt: skip
     """Lower `time` of the listed nodes to the earliest start at a bare triangle within reach.
 
-    A start is the triangle's `base_time (triangles,)` plus the distance times the node's slowness;
+    A start is the triangle's time, from those of its corners, `base_time (triangles, 3)`, plus the distance times the
+    node's slowness;
     `reach (listed,)` is in cells. `bare_of (n,)` numbers the cells that have triangles, -1 for none;
     `box (cells, 6)` is the box round them and `least_base` the least of their base times. `beyond` takes how
     much farther, um, a front that comes across a thin film has to go from the node's place to its sample.
@@ -186,8 +223,8 @@ def nearest_starts(
         for open_only in (False, True):  # the nearest face of all is mostly one that the node sees
             best, qx, qy, qz, found = _earliest(
                 px, py, pz, x, y, z, np.int64(reach[k]), film, slowness[a], time[a], open_only, bare_of, box, first,
-                triangles, films_of, base_time, least_base, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc,
-                dx, dy, mid,
+                triangles, films_of, base_time, least_base, medium, code, cell_mixed, row_of, values, ti, bi, gi,
+                shape, zc, dx, dy, mid,
             )  # fmt: skip
             if open_only or found <= 0 or _sees(
                 px, py, pz, qx, qy, qz, film, medium, code, cell_mixed, row_of, values, ti, bi, gi, shape, zc, dx, dy,
@@ -219,28 +256,45 @@ def boxes(triangles, first):
     return out
 
 
+@njit(cache=True)
+def _node_of(i, film, code, own, keys, first_thin, films):
+    """A film's node at a sample, its own or one beside a thin part of it; -1 for none."""
+    if code[i] == film:
+        return np.int64(own[i])
+    key = i * films + film
+    at = np.searchsorted(keys, key)
+    return first_thin + at if at < keys.size and keys[at] == key else -1
+
+
 @njit(cache=True, parallel=True)
 def face_times(
-    base_time, triangles, first, cells, corner_offsets, shape, code, source, node_of, time, before, slowness, zc, dx, dy
-):
-    """Lower `base_time (triangles,)` to when an earlier front gets to each triangle from the corners of its cell.
+    base_time, triangles, outer, first, cells, corner_offsets, code, own, keys, first_thin, films, place, time, before,
+    slowness,
+):  # fmt: skip
+    """Lower `base_time (triangles, 3)` to when an earlier front gets to each triangle's corners from those of its cell.
 
-    Only cells that the front gets to sooner than `before (nodes,)` are looked at. Triangles lie cell after cell of
-    `cells` from `first`; `node_of (n,)` gives the front's node of a sample's own film, -1 for none.
+    A front comes from the nodes of the film `outer (triangles,)` on the other side, and only from those that it gets to
+    sooner than `before (nodes,)`. Triangles lie cell after cell of `cells` from `first`; the front's nodes are at
+    `place (nodes, 3)`, by `own (n,)` and the sorted `keys` as in `fronts.link`.
     """
-    _, ny, nx = shape
-    offset = source.size // 2
     for c in prange(cells.size):
-        for a in range(8):
-            i = cells[c] + corner_offsets[a]
-            k = node_of[i]
-            if code[i] < 0 or source[code[i] + offset] == 0 or k < 0 or not time[k] < before[k]:
+        nodes = np.empty(8, np.int64)
+        film = -1
+        for q in range(first[c], first[c + 1]):
+            if outer[q] < 0:
                 continue
-            px, py, pz = (i % nx) * dx, ((i // nx) % ny) * dy, zc[i // (ny * nx)]
-            for q in range(first[c], first[c + 1]):
-                qx, qy, qz = _closest(px, py, pz, triangles, q)
-                d = np.sqrt((px - qx) ** 2 + (py - qy) ** 2 + (pz - qz) ** 2)
-                base_time[q] = min(base_time[q], time[k] + d * slowness[k])
+            if outer[q] != film:
+                film = np.int64(outer[q])
+                for a in range(8):
+                    nodes[a] = _node_of(cells[c] + corner_offsets[a], film, code, own, keys, first_thin, films)
+            for k in nodes:
+                if k < 0 or not time[k] < before[k]:
+                    continue
+                px, py, pz = np.float64(place[k, 0]), np.float64(place[k, 1]), np.float64(place[k, 2])
+                for v in range(3):
+                    qx, qy, qz = triangles[q, v, 0], triangles[q, v, 1], triangles[q, v, 2]
+                    d = np.sqrt((px - qx) ** 2 + (py - qy) ** 2 + (pz - qz) ** 2)
+                    base_time[q, v] = min(base_time[q, v], time[k] + d * slowness[k])
 
 
 @njit(cache=True)

@@ -14,7 +14,7 @@ RINGS = int(BAND) + 1
 
 
 def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray, settled: bool = False) -> np.ndarray:
-    """A removed field over the grid, `(nz, ny, nx)` float32 um, positive where the film goes; the band if all of it does.
+    """A removed field over the grid, `(nz, ny, nx)` float32 um, positive where the film goes; all the band if all goes.
 
     Parameters
     ----------

@@ -8,7 +8,7 @@ from functools import cached_property
 
 import numpy as np
 
-from flowemu.kernels import faces, regions
+from flowemu.kernels import contents, joins, regions
 from flowemu.stack.film import Film
 from flowemu.stack.grid import Grid
 
@@ -140,24 +140,24 @@ class Topology:
     @cached_property
     def piece(self) -> np.ndarray:
         """Root of every sample, then of every interval inside an edge: one film, or joined voids."""
-        parent = regions.join_samples(self.code, len(self.interval_code))
+        parent = joins.join_samples(self.code, len(self.interval_code))
         flat = self.code.reshape(-1)
-        regions.join_edges(
+        joins.join_edges(
             parent, self.samples, flat, self.strides, self.code.shape, self.count, self.start, self.interval_code
         )
-        regions.join_thin(
+        joins.join_thin(
             parent, self.cells, self.row_of, flat, self.count, self.start, self.interval_code, self.corner_offsets
         )
-        return regions.flatten(parent)
+        return joins.flatten(parent)
 
     @cached_property
     def body(self) -> np.ndarray:
         """Like `piece`, with solids that touch joined too."""
         parent = self.piece.copy()
-        regions.join_contacts(
+        joins.join_contacts(
             parent, self.samples, self.code.reshape(-1), self.strides, self.count, self.start, self.interval_code
         )
-        return regions.flatten(parent)
+        return joins.flatten(parent)
 
     @cached_property
     def open_roots(self) -> np.ndarray:
@@ -197,8 +197,8 @@ class Topology:
 
     @cached_property
     def contents(self) -> np.ndarray:
-        """The films and open voids that reach into each mixed cell, as bits; see `kernels.faces`."""
-        return faces.contents(
+        """The films and open voids that reach into each mixed cell, as bits; see `kernels.contents`."""
+        return contents.contents(
             self.cells, self.corner_offsets, self.row_of, self.code.reshape(-1), self.count, self.start,
             self.interval_code, self.is_open, self.piece,
         )  # fmt: skip

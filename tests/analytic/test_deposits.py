@@ -183,3 +183,14 @@ def test_a_thick_film_after_many_steps_leaves_nothing_afloat():
     stack = coat(coat(stack, stacks.blank("thin", step=2), 1.1), stacks.blank("thick", step=3), 5.3)
     for x in (3.0, 9.3, 16.0):
         assert [name for name, _, _ in stacks.layers(stack, x)] == ["wafer", "low", "thin", "thick"]
+
+
+@pytest.mark.parametrize("cell", [0.25, 0.3, 0.7])
+def test_films_many_cells_thick_follow_each_other_at_any_cell(cell):
+    """Two glasses of 12 and 8 cells, at 60 % coverage and conformal: thickness exact, and void above at the band."""
+    grid = stacks.even_grid(8, -3 * cell, 34 * cell, cell)
+    stack = coat(stacks.bare(grid, 0.3 * cell), stacks.blank("lower"), 12 * cell, 0.6)
+    stack = coat(stack, stacks.blank("upper"), 8 * cell)
+    for name, thickness in (("lower", 12 * cell), ("upper", 8 * cell)):
+        assert stacks.thickness(stack, name, 4 * cell) == pytest.approx(thickness, abs=0.01 * cell)
+    assert stack.surface.max() == pytest.approx(stack.band, rel=0.01)

@@ -37,8 +37,8 @@ def profile_errors(cell: float, depth: float, mask: float = 2.0) -> np.ndarray:
 
 @pytest.mark.parametrize("depth", [3.0, 10.0, 20.0])
 def test_the_profile_under_a_mask_is_a_quarter_circle(depth):
-    """Radius = depth = undercut, over 3 to 20 cells: to 0.12 cell everywhere (seen: 0.102), on either side."""
-    assert np.abs(profile_errors(1.0, depth)).max() < 0.12
+    """Radius = depth = undercut, over 3 to 20 cells: to 0.1 cell everywhere (seen: 0.088), on either side."""
+    assert np.abs(profile_errors(1.0, depth)).max() < 0.1
 
 
 @pytest.mark.parametrize("mask", [0.1, 0.3, 0.7])
@@ -89,7 +89,7 @@ def test_times_through_films_of_unlike_rates_add(upper):
 def test_a_front_bends_round_an_obstacle_in_the_film():
     """T = |source - corner| + |corner - r| below a buried bar, out of sight: 0.22 cell on average, 0.4 at most.
 
-    A mask's edge at x = 4.3 opens a glass; the bar lies on its lower film.
+    A mask's edge at x = 4.3 opens a glass; the bar lies on its lower film. Seen: 0.21 on average.
     """
     grid = stacks.even_grid(36, -2, 34)
     stack = coat(stacks.bare(grid, 0.13), stacks.blank("glass 1"), 8.0)

@@ -74,9 +74,10 @@ def _values(
     stack: FilmStack, k: int, strike: Strike, wall: float, box: Box, depth: np.ndarray, cut: np.ndarray
 ) -> np.ndarray:
     """Removed field of film `k` at the marked samples of the box, 0 at the others, float32 um."""
-    below = _height_above_floor(stack, k, box, depth[box.columns])
     lateral = _wall_distance(stack, k, strike, box, wall)
-    return np.asarray(shadow.removed_values(box.mark, below, lateral, cut[box.columns], stack.band))
+    shielded = (box.mark == shadow.HELD).any(axis=0) & ~np.isfinite(strike.met[k][box.columns])
+    below = _height_above_floor(stack, k, box, depth[box.columns], lateral, shielded)
+    return np.asarray(shadow.removed_values(box.mark, below, lateral, cut[box.columns], shielded, stack.band))
 
 
 def _marked(stack: FilmStack, k: int, low: int) -> np.ndarray:
@@ -128,17 +129,21 @@ def _depths(k: int, rate: float, strike: Strike) -> tuple[np.ndarray, np.ndarray
     return depth, cut
 
 
-def _height_above_floor(stack: FilmStack, k: int, box: Box, depth: np.ndarray) -> np.ndarray:
+def _height_above_floor(
+    stack: FilmStack, k: int, box: Box, depth: np.ndarray, lateral: np.ndarray, shielded: np.ndarray
+) -> np.ndarray:
     """Height of the box's samples above the etched floor of film `k`, float32 um.
 
     The floor is the film's own surface moved down by the etched depth, so it keeps walls and steps
-    thinner than a cell.
+    thinner than a cell. Columns under a mask take the depth beside its edge, so that the wall is cut
+    there; columns `shielded` by a film that no mask covers keep their surface.
     """
     f, shape = stack.topology.fields, stack.topology.code.shape
     top = f.arrays[f.top[k]].reshape(shape)
     gone = f.arrays[max(f.gone[k], 0)].reshape(shape)
     depth = np.ascontiguousarray(depth)
-    return shadow.moved_down(box.mark, top, gone, bool(f.gone[k] >= 0), depth, stack.grid.z, *box.corner)
+    given = box.mark, top, gone, bool(f.gone[k] >= 0), depth, lateral, shielded
+    return np.asarray(shadow.moved_down(*given, stack.grid.z, *box.corner))
 
 
 def _wall_distance(stack: FilmStack, k: int, strike: Strike, box: Box, wall: float) -> np.ndarray:

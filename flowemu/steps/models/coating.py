@@ -10,6 +10,7 @@ from flowemu.stack.film import Film
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.surfaces import distance_in_void
 
+ROUNDING = 1e-3  # of the band
 EXACT = 5.5  # cells above the surface whose distance is taken as it stands; beyond it is marched
 
 
@@ -32,7 +33,8 @@ def coat(stack: FilmStack, film: Film, thickness: float, coverage: float = 1.0) 
     if coverage < 1.0:
         top = kernel.normalise(top.astype(np.float32), open_space, grid.z, grid.cell, grid.cell)
         top = redistance(top, grid.cell, grid.cell, grid.z, stack.band)
-        thinnest = np.where(surface < stack.band, surface - np.float32(0.5 * thickness * coverage), np.float32(np.inf))
+        within = surface < (1 - ROUNDING) * stack.band  # beyond it the surface field says no more than the band
+        thinnest = np.where(within, surface - np.float32(0.5 * thickness * coverage), np.float32(np.inf))
         top = np.minimum(top, thinnest)
     if thickness * coverage < grid.cell:
         top = _over_corners(stack, top, open_space, 0.5 * thickness * coverage)

@@ -72,7 +72,7 @@ class Beam:
         etched = [k for k in range(len(self.stack.films)) if self.rates.get(k, 0) > 0 and k not in self.masks]
         top = self.through([film, *(k for k in etched if k != film)])[0, 0]
         first = topmost(self.stack)
-        open_area = (first >= 0) & ~np.isin(first, list(self.masks))
+        open_area = (first >= 0) & ~np.isin(first, list(self.masks - {film}))
         times = np.sort(top[open_area])
         if len(times) == 0:
             return float("inf")

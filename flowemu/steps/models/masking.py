@@ -22,12 +22,14 @@ def print_resist(stack: FilmStack, resist: Film, thickness: float, opened: np.nd
     """
     coated = spin(stack, resist, thickness)
     grid = stack.grid
-    removed = np.broadcast_to(opened.astype(np.float32)[None], grid.shape)
-    if wall != 90.0:
-        angle = np.radians(wall)
-        rise = grid.z[:, None, None] - foot_heights(surface_heights(stack), opened)[None]
-        removed = ((opened[None] + rise / np.tan(angle)) * np.sin(angle)).astype(np.float32)
-    return coated.carve({len(coated.films) - 1: np.ascontiguousarray(removed)})
+    removed = np.empty(grid.shape, np.float32)
+    if wall == 90.0:
+        removed[:] = opened
+    else:
+        angle, foot = np.radians(wall), foot_heights(surface_heights(stack), opened)
+        for plane, height in zip(removed, grid.z, strict=True):
+            plane[:] = (opened + (height - foot) / np.tan(angle)) * np.sin(angle)
+    return coated.carve({len(coated.films) - 1: removed})
 
 
 def foot_heights(heights: np.ndarray, opened: np.ndarray) -> np.ndarray:

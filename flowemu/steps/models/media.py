@@ -39,7 +39,7 @@ class Nodes:
     Attributes
     ----------
     own : (samples,) int32; node of a sample in its own film, -1 for none
-    first_thin : the nodes from here on are of samples beside a thin film
+    keys : (thin,) int64, rising; sample x films + film of the nodes beside a thin film, which come from `first_thin` on
     place : (n, 3) float32; x, y, z, um from the first sample in x and y
     stage : (films,) uint8; 1 for the films that the front etches
     medium : (films,) int64; first film of the same rate
@@ -48,6 +48,7 @@ class Nodes:
     sample: np.ndarray
     film: np.ndarray
     own: np.ndarray
+    keys: np.ndarray
     first_thin: int
     place: np.ndarray
     neighbours: np.ndarray
@@ -79,7 +80,7 @@ class Nodes:
             node_sample, node_film, own, keys, len(sample), code, medium, t.code.shape, t.row_of, t.count, t.start,
             t.interval_code,
         )  # fmt: skip
-        return cls(node_sample, node_film, own, len(sample), place, neighbours, stage, medium)
+        return cls(node_sample, node_film, own, keys, len(sample), place, neighbours, stage, medium)
 
 
 @dataclass(frozen=True, eq=False)

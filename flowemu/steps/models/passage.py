@@ -7,7 +7,7 @@ from functools import cached_property
 
 import numpy as np
 
-from flowemu.kernels import faces, plain, starts
+from flowemu.kernels import contents, faces, plain, starts
 from flowemu.kernels.march import arrival_on_graph
 from flowemu.stack.stack import FilmStack
 from flowemu.steps.models.media import Front, Nodes
@@ -30,11 +30,13 @@ def marched(
 class Faces:
     """Bare triangles of the films that a front etches, `(n, 3, 3)` um, cell after cell of `cells` from `first`.
 
-    `box (cells, 6)` lies round a cell's triangles, and `partly (cells,)` marks the cells in which a bare surface ends.
+    `films` and `outer (n,)` are the codes on either side of each, `box (cells, 6)` lies round a cell's triangles, and
+    `partly (cells,)` marks the cells in which a bare surface ends.
     """
 
     triangles: np.ndarray
     films: np.ndarray
+    outer: np.ndarray
     cells: np.ndarray
     first: np.ndarray
     box: np.ndarray
@@ -44,14 +46,14 @@ class Faces:
     def of(cls, stack: FilmStack, nodes: Nodes, source: np.ndarray, within: np.ndarray) -> Faces:
         """The faces in the listed cells that lie bare to what `source` marks; see `kernels.faces`."""
         t, grid, f = stack.topology, stack.grid, stack.topology.fields
-        triangles, films, number, partly = faces.bare_triangles(
+        triangles, films, outer, number, partly = faces.bare_triangles(
             within, t.corner_offsets, t.code.shape, t.row_of, t.values, t.code.reshape(-1), t.count, t.start,
             t.interval_code, f.top, f.floor, f.gone, nodes.stage, source, t.is_open, t.piece, grid.z, grid.cell,
             grid.cell,
         )  # fmt: skip
         bare = np.flatnonzero(number)
         first = np.concatenate([[0], np.cumsum(number[bare])])
-        return cls(triangles, films, within[bare], first, starts.boxes(triangles, first), partly[bare])
+        return cls(triangles, films, outer, within[bare], first, starts.boxes(triangles, first), partly[bare])
 
     def mark_ends(self, stack: FilmStack, nodes: Nodes, more: np.ndarray) -> None:
         """Mark as partly bare the cells beside which the bare surface ends; it goes on into the cells `more`."""
@@ -80,7 +82,8 @@ def _start(stack: FilmStack, front: Front, found: Faces, base: np.ndarray, chose
     listed = np.flatnonzero(reach >= 0)
     starts.nearest_starts(
         listed, nodes.sample, nodes.film, nodes.place, reach[listed], _numbered(found.cells, t.code.size, chosen),
-        found.box, found.first, found.triangles, found.films, base, np.minimum.reduceat(base, found.first[:-1]),
+        found.box, found.first, found.triangles, found.films, base,
+        np.minimum.reduceat(base.min(axis=1), found.first[:-1]),
         front.slowness, nodes.medium, t.code.reshape(-1), t.is_mixed, t.row_of, t.values, t.fields.top, t.fields.floor,
         t.fields.gone, t.code.shape, grid.z, grid.cell, grid.cell, front.time, front.beyond,
     )  # fmt: skip
@@ -90,19 +93,19 @@ def start_from_void(stack: FilmStack, front: Front) -> None:
     """Lower the front's times (its own arrays) near the faces that lie bare to the open space."""
     t = stack.topology
     source = np.zeros(2 * (len(stack.films) + 1) + 1, np.uint8)
-    between = faces.cells_between(t.contents, front.nodes.stage, source)
+    between = contents.cells_between(t.contents, front.nodes.stage, source)
     cells = t.cells[between]
     quiet = _start_from_fields(stack, front, cells, t.contents[between])
     found = Faces.of(stack, front.nodes, source, cells[~quiet])
     found.mark_ends(stack, front.nodes, cells[quiet])
-    _start(stack, front, found, np.zeros(len(found.films)), np.arange(len(found.cells)))
+    _start(stack, front, found, np.zeros((len(found.films), 3)), np.arange(len(found.cells)))
 
 
-def _start_from_fields(stack: FilmStack, front: Front, cells: np.ndarray, contents: np.ndarray) -> np.ndarray:
+def _start_from_fields(stack: FilmStack, front: Front, cells: np.ndarray, found: np.ndarray) -> np.ndarray:
     """Lower the times in those of the cells that lie far from all but smooth faces; which they are, bool."""
     t, f, nodes, code = stack.topology, stack.topology.fields, front.nodes, stack.topology.code.reshape(-1)
     field = plain.plain_fields(
-        cells, contents, t.corner_offsets, t.row_of, t.values, code, f.top, f.floor, f.gone, nodes.stage, t.is_open,
+        cells, found, t.corner_offsets, t.row_of, t.values, code, f.top, f.floor, f.gone, nodes.stage, t.is_open,
         t.piece,
     )  # fmt: skip
     ends = (field < 0).astype(np.uint8)
@@ -148,7 +151,7 @@ class Passage:
     @cached_property
     def faces(self) -> Faces:
         t = self.stack.topology
-        chosen = faces.cells_between(t.contents, self.nodes.stage, self.source)
+        chosen = contents.cells_between(t.contents, self.nodes.stage, self.source)
         if self.thin is not None:
             return Faces.of(self.stack, self.nodes, self.source, t.cells[chosen[self.thin[chosen]]])
         found = Faces.of(self.stack, self.nodes, self.source, t.cells[chosen])
@@ -157,17 +160,18 @@ class Passage:
 
     @cached_property
     def base(self) -> np.ndarray:
-        """When the earlier front gets to each triangle, as far as it is known, s."""
-        return np.full(len(self.faces.films), np.inf)
+        """When the earlier front gets to each triangle's corners, as far as it is known, `(n, 3)` s."""
+        return np.full((len(self.faces.films), 3), np.inf)
 
     def start(self, front: Front, earlier: Front) -> None:
         """Lower the front's times by what the earlier front has reached since the last call."""
-        t, grid, found = self.stack.topology, self.stack.grid, self.faces
+        t, found, nodes = self.stack.topology, self.faces, earlier.nodes
         old = self.base.copy()
         starts.face_times(
-            self.base, found.triangles, found.first, found.cells, t.corner_offsets, t.code.shape, t.code.reshape(-1),
-            self.source, earlier.nodes.own, earlier.time, self.before, earlier.slowness, grid.z, grid.cell, grid.cell,
+            self.base, found.triangles, found.outer, found.first, found.cells, t.corner_offsets, t.code.reshape(-1),
+            nodes.own, nodes.keys, nodes.first_thin, len(nodes.stage), nodes.place, earlier.time, self.before,
+            earlier.slowness,
         )  # fmt: skip
         self.before = earlier.time.copy()
-        sooner = np.add.reduceat(self.base < old, found.first[:-1]) if len(old) else np.empty(0, bool)
+        sooner = np.logical_or.reduceat((self.base < old).any(axis=1), found.first[:-1]) if len(old) else np.empty(0, bool)
         _start(self.stack, front, found, self.base, np.flatnonzero(sooner))

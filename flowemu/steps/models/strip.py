@@ -57,7 +57,8 @@ def _without(stack: FilmStack, films: list[Film]) -> FilmStack:
 def _pieces(stack: FilmStack, k: int) -> np.ndarray:
     """Roots of the pieces of film `k`; slivers without a sample are left out and go with the rest."""
     t, cell = stack.topology, stack.grid.cell
-    thick = t.piece[np.flatnonzero(t.code.reshape(-1) == k)]
+    sample = np.flatnonzero(t.code.reshape(-1) == k)
+    thick = sample[t.piece[sample] == sample]  # a piece's root is the first of its samples
     inner = t.inner
     upright = (inner.code == k) & (inner.direction == 2)
     _, ny, nx = t.code.shape

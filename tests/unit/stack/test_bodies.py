@@ -83,3 +83,21 @@ def test_a_part_that_reaches_the_windows_side_says_so():
     stack = stack.carve(stacks.front(stack, {"sac": 1.0}).removed(30.0))
     (part,) = find_parts(stack, {"bar": ("bar", (5.0, 3.0))})
     assert (part.held, part.at_side) == (False, True)
+
+
+@pytest.mark.parametrize("width", [2.0, 2.5, 3.0, 4.0])
+def test_a_narrow_anchor_holds_and_its_contact_is_its_foot(width):
+    """Posts of two cells and more, at random heights and offsets: always held; contact to whole columns."""
+    rng = np.random.default_rng(2)
+    for _ in range(4):
+        base, offset, gap = rng.uniform(0, 1), rng.uniform(0, 1), rng.uniform(0.5, 4)
+        grid = stacks.even_grid(24, -3, 12)
+        away = np.abs(grid.x - 12 - offset)
+        stack = coat(stacks.bare(grid, base), stacks.blank("sac"), gap)
+        stack = stacks.stripped(stacks.beam_etch(stacks.printed(stack, width / 2 - away), {"sac": 1.0}, 1.1 * gap))
+        stack = stacks.printed(coat(stack, stacks.blank("plate"), 2.2), away - 8.0)
+        stack = stacks.stripped(stacks.beam_etch(stack, {"plate": 1.0}, 2.7 + gap))
+        stack = stack.carve(stacks.front(stack, {"sac": 1.0}).removed(40.0))
+        (part,) = find_parts(stack, {"plate": ("plate", (17.0, 0.5))})
+        assert part.held
+        assert contact_area(stack, part.pieces) == pytest.approx(width, abs=0.51)

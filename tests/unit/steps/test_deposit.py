@@ -16,10 +16,10 @@ POLY = {"film": "poly", "material": "polysilicon", "thickness": "1.2 um", "metho
 GLASS = {"film": "glass", "material": "psg", "thickness": "2 um", "method": "lpcvd"}
 
 
-def step(height: float = 4.0, nx: int = 32) -> Wafer:
-    """A wafer with a block of this height up to x = 16.3."""
+def step(height: float = 4.0, nx: int = 32, edge: float = 16.3) -> Wafer:
+    """A wafer with a block of this height up to x = `edge`."""
     wafer = layered(("block", "nitride", None, height), nx=nx)
-    stack = stacks.printed(wafer.stack, wafer.stack.grid.x - 16.3)
+    stack = stacks.printed(wafer.stack, wafer.stack.grid.x - edge)
     return Wafer(stacks.stripped(stacks.beam_etch(stack, {"block": 1.0}, 1.1 * height)))
 
 
@@ -118,8 +118,8 @@ def test_what_the_film_rests_on_is_on_record() -> None:
 
 def test_a_gap_too_narrow_to_be_coated_inside_is_told() -> None:
     """A slit 0.4 cell wide, left by a film between a block and what was laid over it: told with its width."""
-    wafer = do(do(step(), "deposit", 3, **{**POLY, "film": "sac", "thickness": "0.4 um"}), "deposit", 4,
-               **{**POLY, "film": "outer", "thickness": "3 um"})  # fmt: skip
+    sac, outer = {**POLY, "film": "sac", "thickness": "0.4 um"}, {**POLY, "film": "outer", "thickness": "3 um"}
+    wafer = do(do(step(3.7, edge=15.8), "deposit", 3, **sac), "deposit", 4, **outer)
     wafer = do(do(wafer, "polish", to="block"), "strip", film="sac")
     found = [event for event in do(wafer, "deposit", **POLY).events if isinstance(event, Unresolved)]
     assert [event.film for event in found] == ["poly"]

@@ -69,10 +69,15 @@ def test_both_or_neither_of_depth_and_film_are_refused(given: dict[str, str]) ->
         step_kinds()["polish"].settings.model_validate(given)
 
 
-def test_a_polish_above_everything_would_be_no_polish() -> None:
-    """A depth has to be above zero; a polish to the topmost film takes nothing and leaves every bit."""
-    with pytest.raises(ValueError, match="'0 um' is not above zero"):
-        step_kinds()["polish"].settings.model_validate({"depth": "0 um"})
+def test_a_polish_to_the_topmost_film_takes_next_to_nothing() -> None:
+    """The plane lies at the film's own top: its surface moves by less than 1e-4 cell."""
     before = layered(("film", "nitride", None, 2.0))
     after = do(before, "polish", to="film")
-    assert np.abs(after.stack.films[1].top - before.stack.films[1].top).max() < 1e-5
+    assert stacks.thickness(after.stack, "film", 6.0) == pytest.approx(2.0, abs=1e-4)
+    near = np.abs(before.stack.surface) < 3.0
+    assert np.abs(after.stack.surface - before.stack.surface)[near].max() < 1e-4
+
+
+def test_a_depth_of_nothing_is_refused() -> None:
+    with pytest.raises(ValueError, match="'0 um' is not above zero"):
+        step_kinds()["polish"].settings.model_validate({"depth": "0 um"})
