@@ -47,7 +47,8 @@ class Settings(BaseModel):
     @model_validator(mode="after")
     def _keeps_rules(self) -> Settings:
         fields = type(self).model_fields
-        broken = self.broken_rules(fields[name].alias or name for name in self.model_fields_set)
+        given = (name for name in self.model_fields_set if getattr(self, name) is not None)
+        broken = self.broken_rules(fields[name].alias or name for name in given)
         if broken:
             raise complaint("; ".join(broken))
         return self

@@ -223,7 +223,8 @@ def _cut_up(
 ):  # fmt: skip
     """Cut a face along the other fields' surfaces and add its bare pieces.
 
-    A piece nowhere deeper than `thin` um beyond a surface is not cut off. Returns the number of triangles.
+    A piece nowhere deeper than `thin` um beyond a surface is not cut off. Returns the number of triangles, and whether
+    some piece is covered.
     """
     poly = np.empty((PIECES + 1, CORNERS, 3 + nc), np.float64)
     size = np.zeros(PIECES + 1, np.int64)
@@ -244,16 +245,18 @@ def _cut_up(
                 _split(poly, size, k, pieces, 3 + g)
                 pieces += 1
     w = np.empty(nc, np.float64)
+    covered = False
     for k in range(pieces):
         for h in range(nc):
             w[h] = 0.0
             for i in range(size[k]):
                 w[h] += poly[k, i, 3 + h] / size[k]
         state, outer = _bare(w, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi)
+        covered |= state == 1
         if state == 2:
             for i in range(size[k] - 2):
                 n = _add_triangle(tri, outer_of, n, poly[k], 0, i + 1, i + 2, outer)
-    return n
+    return n, covered
 
 
 @njit(cache=True)
@@ -284,10 +287,9 @@ def bare_faces(
     m = _face(c, vals, points, nc, corner, value)
     _means(c, vals, nc, swapped, mean_in, mean_out)
     if not _one_sided(m, value, mean_in, mean_out, nc):
-        n = _cut_up(
+        return _cut_up(
             c, m, corner, value, mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi, tri, outer_of, n, thin
         )
-        return n, True
     state, outer = _bare(value[0], mean_in, mean_out, film, source, cut, nc, negative, ti, bi, gi)
     if state == 2:
         for t in range(m - 3, -1, -1):

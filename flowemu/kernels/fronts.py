@@ -14,6 +14,32 @@ import numpy as np
 from numba import njit, prange
 
 
+@njit(cache=True, parallel=True)
+def own_samples(code, stage):
+    """Flat numbers of the samples in staged films, rising, and the place of every sample among them, -1 for none."""
+    nz, ny, nx = code.shape
+    number = np.zeros(nz + 1, np.int64)
+    for plane in prange(nz):
+        z = np.int64(plane)
+        for y in range(ny):
+            for x in range(nx):
+                number[z + 1] += code[z, y, x] >= 0 and stage[code[z, y, x]] != 0
+    first = np.cumsum(number)
+    out = np.empty(first[nz], np.int64)
+    own = np.full(nz * ny * nx, -1, np.int32)
+    for plane in prange(nz):
+        z = np.int64(plane)
+        k = first[z]
+        for y in range(ny):
+            for x in range(nx):
+                if code[z, y, x] >= 0 and stage[code[z, y, x]] != 0:
+                    i = (z * ny + y) * nx + x
+                    out[k] = i
+                    own[i] = k
+                    k += 1
+    return out, own
+
+
 @njit(cache=True)
 def thin_nodes(samples, code, stage, open_space, strides, shape, count, start, interval_code, interval_end, zc, dx, dy):
     """Nodes of films at samples just outside them, where at most one sample lies across the film.
@@ -25,7 +51,7 @@ def thin_nodes(samples, code, stage, open_space, strides, shape, count, start, i
     size = 4
     for s in range(samples.size):
         for d in range(3):
-            size += 2 * count[s, d]
+            size += 2 * np.int64(count[s, d])
     sample = np.empty(size, np.int64)
     film = np.empty(size, np.int64)
     place = np.empty((size, 3), np.float32)

@@ -74,7 +74,7 @@ def join_edges(parent, samples, code, strides, shape, count, start, interval_cod
             if d > 2 and code[i] == code[j]:
                 unite(parent, i, j)
             at = start[s * 7 + d]
-            last = count[s, d] - 1
+            last = np.int64(count[s, d]) - 1
             for q in range(last):
                 if interval_code[at + q] < 0 and interval_code[at + q + 1] < 0:
                     a = i if q == 0 else n + at + q
@@ -110,7 +110,7 @@ def join_thin(parent, cells, row_of, code, count, start, interval_code, corner_o
                 for b in range(a + 1, 4):
                     d = STEP_OF_BITS[TETRAHEDRA[t, b] - TETRAHEDRA[t, a]]
                     at = start[s * 7 + d]
-                    for q in range(1, count[s, d] - 1):
+                    for q in range(1, np.int64(count[s, d]) - 1):
                         if m < 60:
                             node[m] = n + at + q
                             kind[m] = interval_code[at + q]
@@ -129,7 +129,7 @@ def join_contacts(parent, samples, code, strides, count, start, interval_code):
         i = samples[s]
         for d in range(7):
             at = start[s * 7 + d]
-            last = count[s, d] - 1
+            last = np.int64(count[s, d]) - 1
             for q in range(last):
                 if interval_code[at + q] >= 0 and interval_code[at + q + 1] >= 0:
                     a = i if q == 0 else n + at + q

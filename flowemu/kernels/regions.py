@@ -183,9 +183,9 @@ def partition(va, vb, ti, bi, gi, code_out, end_out, cuts, mid):
 
 @njit(cache=True, parallel=True)
 def mixed_cells(code):
-    """Mark each cell between samples, `(nz-1, ny-1, nx-1)` bool, whose corners differ in code."""
+    """Mark each cell between samples, by its first sample, `(nz, ny, nx)` bool, whose corners differ in code."""
     nz, ny, nx = code.shape
-    mixed = np.zeros((nz - 1, ny - 1, nx - 1), np.bool_)
+    mixed = np.zeros((nz, ny, nx), np.bool_)
     for z in prange(nz - 1):
         for y in range(ny - 1):
             for x in range(nx - 1):
@@ -205,11 +205,11 @@ def mixed_cells(code):
 @njit(cache=True)
 def near_samples(mixed):
     """Mark the samples at the corners of mixed cells, `(nz, ny, nx)` bool."""
-    cz, cy, cx = mixed.shape
-    near = np.zeros((cz + 1, cy + 1, cx + 1), np.bool_)
-    for z in range(cz):
-        for y in range(cy):
-            for x in range(cx):
+    nz, ny, nx = mixed.shape
+    near = np.zeros((nz, ny, nx), np.bool_)
+    for z in range(nz - 1):
+        for y in range(ny - 1):
+            for x in range(nx - 1):
                 if mixed[z, y, x]:
                     near[z : z + 2, y : y + 2, x : x + 2] = True
     return near
@@ -260,7 +260,7 @@ def edge_starts(count):
     total = 0
     for e in range(flat.size):
         start[e] = total
-        total += flat[e]
+        total += np.int64(flat[e])
     start[-1] = total
     return start
 

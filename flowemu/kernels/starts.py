@@ -12,6 +12,7 @@ from numba import njit, prange
 
 NEAR = 1  # cells beyond its own from which a node looks for faces
 FAR = 3  # the same where a face ends under a cover
+STEADY = 0.75  # of a plane's spacing that the next ones have at least (1 / 1.3, as the grid sees to)
 HEAD_ON = 0.8  # cosine above which a front comes at a thin film across it and not along it
 
 
@@ -167,7 +168,11 @@ def _earliest(
     best = known
     at_x = at_y = at_z = 0.0
     found = -1
+    step = min(dx, dy, zc[min(z + 1, nz - 1)] - zc[z] if z + 1 < nz else dx, zc[z] - zc[z - 1] if z > 0 else dx)
+    aside = abs(px - x * dx) + abs(py - y * dy) + abs(pz - zc[z])  # of a thin film's node from its sample
     for r in range(reach + 1):  # shell after shell, so that most of the farther cells can be passed by
+        if (r * STEADY * step - aside) * slow >= best:
+            break
         for cz in range(max(z - 1 - r, 0), min(z + 1 + r, nz - 1)):
             if _gap(pz, zc[cz], zc[cz + 1]) * slow >= best:
                 continue
@@ -207,8 +212,7 @@ def nearest_starts(
     """Lower `time` of the listed nodes to the earliest start at a bare triangle within reach.
 
     A start is the triangle's time, from those of its corners, `base_time (triangles, 3)`, plus the distance times the
-    node's slowness;
-    `reach (listed,)` is in cells. `bare_of (n,)` numbers the cells that have triangles, -1 for none;
+    node's slowness; `reach (listed,)` is in cells. `bare_of (n,)` numbers the cells that have triangles, -1 for none;
     `box (cells, 6)` is the box round them and `least_base` the least of their base times. `beyond` takes how
     much farther, um, a front that comes across a thin film has to go from the node's place to its sample.
     """

@@ -146,8 +146,10 @@ def part_columns(stack: FilmStack, part: Part) -> np.ndarray:
     return columns | wide[: columns.shape[0], : columns.shape[1]]
 
 
-def box_and_volume(stack: FilmStack, part: Part) -> tuple[tuple[float, ...], float]:
-    """Box `(x0, y0, z0, x1, y1, z1)` in um and volume in um3 of a part."""
+def box_and_volume(
+    stack: FilmStack, part: Part, points: np.ndarray | None = None
+) -> tuple[tuple[float, ...], float]:
+    """Box `(x0, y0, z0, x1, y1, z1)` in um and volume in um3 of a part, from its `surface_points` if given."""
     from flowemu.stack.measure import film_volume
 
     grid = stack.grid
@@ -156,7 +158,7 @@ def box_and_volume(stack: FilmStack, part: Part) -> tuple[tuple[float, ...], flo
         return (0.0,) * 6, 0.0
     ys, xs = np.nonzero(columns)
     low, high = np.inf, -np.inf
-    points = surface_points(stack, part)
+    points = surface_points(stack, part) if points is None else points
     if len(points):
         low, high = float(points[:, 2].min()), float(points[:, 2].max())
         x0, x1 = float(points[:, 0].min()), float(points[:, 0].max())

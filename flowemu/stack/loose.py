@@ -41,9 +41,8 @@ class Verdict:
 class Obstacle:
     """The rest of the structure, asked whether the body at an offset runs into it."""
 
-    def __init__(self, stack: FilmStack, part: Part) -> None:
+    def __init__(self, stack: FilmStack, part: Part, points: np.ndarray) -> None:
         self.stack, self.part = stack, part
-        points = surface_points(stack, part)
         self.all_points = points
         step = max(1, len(points) // MOST_POINTS)
         self.points = np.ascontiguousarray(points[::step])
@@ -108,9 +107,12 @@ class Obstacle:
         return np.ascontiguousarray(points + offset)
 
 
-def judge(stack: FilmStack, part: Part) -> Verdict:
-    """Whether a loose body can leave, moved through free space, and its play along each axis."""
-    obstacle = Obstacle(stack, part)
+def judge(stack: FilmStack, part: Part, points: np.ndarray | None = None) -> Verdict:
+    """Whether a loose body can leave, moved through free space, and its play along each axis.
+
+    `points` are its `surface_points`, if they are known.
+    """
+    obstacle = Obstacle(stack, part, surface_points(stack, part) if points is None else points)
     play = tuple(_play(obstacle, axis) for axis in AXES)
     way = _leaves(obstacle, play)
     if way is not None:
@@ -211,4 +213,6 @@ def _turns_out(obstacle: Obstacle, play: tuple[float | None, ...]) -> bool:
                 rise += pitch
             if rise >= top:
                 return True
+        else:
+            return False  # all the way round: the other way leads to the same turns
     return False

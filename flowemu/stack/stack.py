@@ -88,8 +88,8 @@ class FilmStack:
         laid = replace(film, floor=self.surface)
         return watch(self, FilmStack(self.grid, (*self.films, laid), film.top), "add")
 
-    def carve(self, removed: Mapping[int, np.ndarray]) -> FilmStack:
-        """Take away from each named film what lies where its removed field is positive.
+    def carve(self, removed: Mapping[int, np.ndarray | None]) -> FilmStack:
+        """Take away from each named film what lies where its removed field is positive, or all of it if that is None.
 
         A field raises the film's `gone` field, or its `top` where it only skims that; films left with
         nothing are dropped. Where nothing is taken the very same stack comes back.
@@ -98,10 +98,10 @@ class FilmStack:
         changed, whole = False, set()
         for k, field in removed.items():
             film = films[k]
-            if not bool(np.any(field > 0)):
-                continue
-            if k > 0 and bool(np.all(field > 0)):
+            if field is None:
                 whole.add(k)
+            elif not bool(np.any(field > 0)):
+                continue
             elif skims(film, field, self.grid.cell):
                 films[k] = replace(film, top=np.maximum(film.top, field))
             else:

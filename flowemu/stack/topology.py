@@ -120,8 +120,7 @@ class Topology:
         samples = np.flatnonzero(regions.near_samples(mixed))
         row_of = np.full(code.size, -1, np.int32)
         row_of[samples] = np.arange(len(samples), dtype=np.int32)
-        cz, cy, cx = np.nonzero(mixed)
-        cells = (cz * ny + cy) * nx + cx
+        cells = np.flatnonzero(mixed)
         values = table.gather(samples)
         strides = regions.EDGE_STEPS @ np.array([ny * nx, nx, 1])
         bits = np.arange(8)

@@ -25,7 +25,7 @@ def etch_time(etch: Etch, parts: list[Part]) -> tuple[float, Arrival | None]:
     if etch.directional:
         return _beam_time(etch, how, value), None
     if how == "time":
-        return value, arrive(etch.stack, etch.rates, value)
+        return value, arrive(etch.stack, etch.rates, np.inf if parts else value)  # when a part comes free may be later
     if how == "depth":
         time = value / _flat_rate(etch)
         return time, arrive(etch.stack, etch.rates, time)
@@ -130,10 +130,16 @@ def _dense(arrival: Arrival, t: Any) -> np.ndarray:
 
 
 def free_time(arrival: Arrival, part: Part) -> Freed:
-    """When nothing that the etch removes touches the part any more, and where that happens last.
+    """When nothing that the etch removes touches the part any more, and where that happens last; kept once found.
 
     Films far slower than the fastest, such as a nitride that an anchor stands on, do not count.
     """
+    if part not in arrival.freed:
+        arrival.freed[part] = _free_time(arrival, part)
+    return arrival.freed[part]
+
+
+def _free_time(arrival: Arrival, part: Part) -> Freed:
     stack, t = arrival.stack, arrival.stack.topology
     last, film, where = 0.0, None, None
     slowest = SLOWEST_SHARE * max(arrival.rates.values(), default=0.0)

@@ -2,16 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
 
 from flowemu.kernels import fronts, surface
+from flowemu.stack.bodies import Part
 from flowemu.stack.removed import complete
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.topology import Topology
+from flowemu.stack.wafer import Freed
 from flowemu.steps.models.media import Front, Nodes, groups_by_rate, media_of
 from flowemu.steps.models.passage import Passage, beside_thin, marched, start_from_void
 
@@ -47,35 +49,43 @@ class Arrival:
         return self._kept[k]
 
     @cached_property
+    def freed(self) -> dict[Part, Freed]:
+        """When parts come free, as far as that was asked for."""
+        return {}
+
+    @cached_property
     def _kept(self) -> dict[int, np.ndarray]:
         return {}
 
-    def removed(self, time: float) -> dict[int, np.ndarray]:
-        """Removed field of each etched film after `time` s, `(nz, ny, nx)` float32 um."""
-        if time <= 0:
-            return {}
-        fields = ((k, self._removed_film(k, rate, time)) for k, rate in self.rates.items() if rate > 0)
-        return {k: field for k, field in fields if field is not None}
+    def removed(self, time: float) -> dict[int, np.ndarray | None]:
+        """Removed field of each film reached in `time` s, `(nz, ny, nx)` float32 um; None if it is gone whole."""
+        return dict(self._removed_films(time)) if time > 0 else {}
 
-    def _removed_film(self, k: int, rate: float, time: float) -> np.ndarray | None:
-        stack, t, front = self.stack, self.stack.topology, self.front_of(k)
-        band = np.float32(stack.band)
-        if front is None:
-            return None
-        mine = np.flatnonzero(front.nodes.film == k)
-        depth = (time - front.time[mine]) * rate - front.beyond[mine]
-        if len(depth) and depth.min() >= 0:
-            return np.full(stack.grid.shape, band, np.float32)
-        bare = fronts.bare_voids(
-            t.samples, t.code.reshape(-1), t.open_space.reshape(-1), t.strides, t.count, t.start, t.interval_code, k
-        )
-        if not bare.any() and depth.max(initial=-np.inf) <= 0:
-            return None
-        value = np.full(t.code.size, -band, np.float32)
-        sample = front.nodes.sample[mine]
-        value[sample] = np.maximum(depth, -band)
+    def _removed_films(self, time: float) -> Iterator[tuple[int, np.ndarray | None]]:
+        t = self.stack.topology
+        for k, rate in self.rates.items():
+            front = self.front_of(k)
+            if front is None:
+                continue
+            mine = np.flatnonzero(front.nodes.film == k)
+            depth = (time - front.time[mine]) * rate - front.beyond[mine]
+            bare = fronts.bare_voids(
+                t.samples, t.code.reshape(-1), t.open_space.reshape(-1), t.strides, t.count, t.start, t.interval_code, k
+            )
+            if k > 0 and depth.min(initial=np.inf) >= 0:
+                yield k, None
+            elif bare.any() or depth.max(initial=-np.inf) > 0:
+                yield k, self._removed_film(k, front.nodes.sample[mine], depth, bare, time * rate)
+
+    def _removed_film(
+        self, k: int, sample: np.ndarray, depth: np.ndarray, bare: np.ndarray, reach: float
+    ) -> np.ndarray:
+        """From how deep a film's nodes lie in what is gone, and the open void's samples beside it."""
+        stack, t = self.stack, self.stack.topology
+        value = np.full(t.code.size, -np.float32(stack.band), np.float32)
+        value[sample] = np.maximum(depth, -stack.band)
         if bare.any():
-            value[bare] = time * rate + distance_outside(stack, t, k)[bare]
+            value[bare] = reach + distance_outside(stack, t, k)[bare]
         known = bare
         known[sample] = True
         return complete(stack, value, known, settled=True)

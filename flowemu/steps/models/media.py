@@ -60,9 +60,7 @@ class Nodes:
         t, grid, code = topology, topology.grid, topology.code.reshape(-1)
         stage = np.zeros(len(medium), np.uint8)
         stage[films] = 1
-        sample = np.flatnonzero(np.isin(code, np.array(films, np.int16)))
-        own = np.full(code.size, -1, np.int32)
-        own[sample] = np.arange(len(sample), dtype=np.int32)
+        sample, own = fronts.own_samples(t.code, stage)
         thin_sample, thin_film, thin_place = fronts.thin_nodes(
             t.samples, code, stage, t.open_space.reshape(-1), t.strides, t.code.shape, t.count, t.start,
             t.interval_code, t.interval_end, grid.z, grid.cell, grid.cell,

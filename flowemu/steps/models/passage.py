@@ -173,5 +173,6 @@ class Passage:
             earlier.slowness,
         )  # fmt: skip
         self.before = earlier.time.copy()
-        sooner = np.logical_or.reduceat((self.base < old).any(axis=1), found.first[:-1]) if len(old) else np.empty(0, bool)
-        _start(self.stack, front, found, self.base, np.flatnonzero(sooner))
+        if len(old):
+            sooner = np.logical_or.reduceat((self.base < old).any(axis=1), found.first[:-1])
+            _start(self.stack, front, found, self.base, np.flatnonzero(sooner))

@@ -6,7 +6,7 @@ from typing import Any
 
 import numpy as np
 
-from flowemu.stack.bodies import Part, box_and_volume, find_parts, part_columns
+from flowemu.stack.bodies import Part, box_and_volume, find_parts, part_columns, surface_points
 from flowemu.stack.loose import judge
 from flowemu.stack.removed import whole_pieces
 from flowemu.stack.stack import FilmStack
@@ -23,7 +23,8 @@ def let_go(wafer: Wafer, tools: Any) -> Wafer:
     for part in find_parts(stack, tools.places):
         if part.held:
             continue
-        box, volume = box_and_volume(stack, part)
+        points = surface_points(stack, part)
+        box, volume = box_and_volume(stack, part, points)
         if not part.named and volume < DUST * stack.grid.cell**3:
             gone.append(part)
             continue
@@ -38,7 +39,7 @@ def let_go(wafer: Wafer, tools: Any) -> Wafer:
         if part.at_side:
             state, play, searched = "cut by the window", None, "its end lies outside the window"
         else:
-            verdict = judge(stack, part)
+            verdict = judge(stack, part, points)
             state, play, searched = verdict.state, verdict.play, verdict.searched
         events.append(
             Loosened(tools.step, part.name, names, state, volume, box, play, searched, part_columns(stack, part))  # type: ignore[arg-type]

@@ -80,7 +80,7 @@ def test_a_level_fields_slope_goes_on_for_a_ring(slope):
 
 
 def test_a_round_front_goes_on_bent():
-    """Distance from a line 3 cells away, one sample beyond the known ones: to 0.1 cell, where flat is more than twice that off."""
+    """Distance from a line 3 cells away, one sample beyond the known ones: to 0.1 cell, where flat is 0.2 off."""
     x, z = np.arange(14.0), np.arange(10.0)
     field = np.hypot(x[None, None, :] - 3.0, z[:, None, None] - 7.4).astype(np.float32)
     known = np.zeros(field.shape, bool)
