@@ -154,8 +154,8 @@ def kept_out(sealed, surface, band):
 
 
 @njit(cache=True)
-def _cover_triangle(top, f, g, counts, least, i, j, k):
-    """Lower `top` at three samples so that it is at most -least where f and g are both zero between them."""
+def _cover_triangle(top, out, f, g, counts, least, i, j, k):
+    """Lower `out` at three samples so that `top` would be at most -least where f and g are both zero between them."""
     f0, f1, f2 = f[i], f[j] - f[i], f[k] - f[i]
     g0, g1, g2 = g[i], g[j] - g[i], g[k] - g[i]
     d = f1 * g2 - f2 * g1
@@ -173,22 +173,23 @@ def _cover_triangle(top, f, g, counts, least, i, j, k):
     if total < 1e-6:
         return
     if counts[i]:
-        top[i] -= much * w / total
+        out[i] = min(out[i], top[i] - much * w / total)
     if counts[j]:
-        top[j] -= much * u / total
+        out[j] = min(out[j], top[j] - much * u / total)
     if counts[k]:
-        top[k] -= much * v / total
+        out[k] = min(out[k], top[k] - much * v / total)
 
 
 @njit(cache=True)
 def cover_corners(top, face, gone, open_space, least):
-    """Lower `top` in the open samples round each corner of a film, so that the corner lies `least` um under it.
+    """`top` lowered in the open samples round each corner of a film, so that the corner lies `least` um under it.
 
-    A corner is where `face` (the film's top or floor) and `gone` are both zero. The division of the
-    grid's faces is that of `kernels.regions`.
+    A corner is where `face` (the film's top or floor) and `gone` are both zero. The grid's faces are divided along
+    either diagonal, so that a mirrored film comes out mirrored.
     """
     nz, ny, nx = top.shape
-    t, f, g, counts = top.reshape(-1), face.reshape(-1), gone.reshape(-1), open_space.reshape(-1)
+    out = top.copy()
+    t, low, f, g, counts = top.reshape(-1), out.reshape(-1), face.reshape(-1), gone.reshape(-1), open_space.reshape(-1)
     steps = ((1, nx, 0, 1, 1), (1, ny * nx, 1, 0, 1), (nx, ny * nx, 1, 1, 0))
     for z in range(nz):
         for y in range(ny):
@@ -203,5 +204,8 @@ def cover_corners(top, face, gone, open_space, least):
                     cut = (g[i] < 0) + (g[i + a] < 0) + (g[i + b] < 0) + (g[i + a + b] < 0)
                     if cut == 0 or cut == 4:
                         continue
-                    _cover_triangle(t, f, g, counts, least, i, i + a, i + a + b)
-                    _cover_triangle(t, f, g, counts, least, i, i + b, i + a + b)
+                    _cover_triangle(t, low, f, g, counts, least, i, i + a, i + a + b)
+                    _cover_triangle(t, low, f, g, counts, least, i, i + b, i + a + b)
+                    _cover_triangle(t, low, f, g, counts, least, i + a, i, i + b)
+                    _cover_triangle(t, low, f, g, counts, least, i + a, i + a + b, i + b)
+    return out

@@ -279,21 +279,27 @@ def last_contact(samples, code, strides, count, start, interval_code, piece, pie
 
 
 @njit(cache=True)
-def contact_times(samples, code, strides, count, start, interval_code, film, time, open_space):
-    """When a front gets to each vertical edge on which something lies on top of `film`, s."""
-    out = np.empty(samples.size, np.float64)
+def foot_times(samples, strides, count, start, interval_code, interval_end, film, below, time):
+    """Where `film` has its foot on a vertical edge: the samples below, and the time there between those of the ends.
+
+    With `below` from 0 on only where it stands on that film. `time (n,)` may be inf at one of the ends.
+    """
+    sample = np.empty(samples.size, np.int64)
+    at_foot = np.empty(samples.size, np.float64)
     m = 0
     for s in range(samples.size):
-        n = np.int64(count[s, 2])
         at = start[s * 7 + 2]
-        for q in range(n - 1):
-            if interval_code[at + q] == film:
-                above = interval_code[at + q + 1]
-                i = samples[s]
-                j = i + strides[2]
-                out[m] = 0.0 if above < 0 else min(time[i], time[j])
-                m += 1
-    return out[:m]
+        for q in range(1, np.int64(count[s, 2])):
+            under = interval_code[at + q - 1]
+            if interval_code[at + q] != film or under == film or (below >= 0 and under != below):
+                continue
+            low, high = np.float64(time[samples[s]]), np.float64(time[samples[s] + strides[2]])
+            share = interval_end[at + q - 1]
+            sample[m] = samples[s]
+            at_foot[m] = low + share * (high - low) if max(low, high) < np.inf else min(low, high)
+            m += 1
+            break
+    return sample[:m], at_foot[:m]
 
 
 @njit(cache=True)

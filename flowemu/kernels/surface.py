@@ -5,6 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numba import njit, prange
 
+PARALLEL = 1e-6  # of 1 - cosine^2: planes closer to one another's direction than this are one
+
 
 @njit(cache=True)
 def _slope(field, z, y, x, zc, dx, dy):
@@ -21,16 +23,18 @@ def _slope(field, z, y, x, zc, dx, dy):
 
 @njit(cache=True)
 def wedge(a, b, cosine):
-    """Distance to the edge where two planes meet, or to the nearer plane's face.
+    """Distance to the solid behind two planes: to the face of one of them, or to the edge where they meet.
 
-    `a` and `b` are the distances (positive outside) to two planes whose normals have this cosine;
-    the solid lies behind both.
+    `a` and `b` are the distances (positive outside) to the planes, whose normals have this cosine. Inside it is the
+    greater of the two.
     """
-    if a <= 0 or b <= 0:
+    if (a <= 0 and b <= 0) or 1 - cosine * cosine < PARALLEL:
         return max(a, b)
-    if a - b * cosine <= 0 or b - a * cosine <= 0:
-        return max(a, b)
-    return np.sqrt((a * a + b * b - 2 * a * b * cosine) / max(1 - cosine * cosine, 1e-6))
+    if a > 0 and b - a * cosine <= 0:
+        return a
+    if b > 0 and a - b * cosine <= 0:
+        return b
+    return np.sqrt((a * a + b * b - 2 * a * b * cosine) / (1 - cosine * cosine))
 
 
 @njit(cache=True)
@@ -76,12 +80,13 @@ def lower_to_film(out, code, top, floor, gone, has_floor, has_gone, zc, dx, dy, 
                     a = _stretched(a, top, z, y, x, zc, dx, dy, coverage)
                     b = _stretched(b, floor, z, y, x, zc, dx, dy, coverage)
                     g = _stretched(g, gone, z, y, x, zc, dx, dy, coverage)
-                if a > 0 and g > 0:
+                d = max(a, b)
+                if d + g <= 0:  # farther inside the one than outside the other: no edge is near
+                    d = max(d, g)
+                elif a >= b:
                     d = wedge(a, g, _cosine(top, 1.0, gone, 1.0, z, y, x, zc, dx, dy))
-                elif b > 0 and g > 0:
-                    d = wedge(b, g, _cosine(floor, -1.0, gone, 1.0, z, y, x, zc, dx, dy))
                 else:
-                    d = max(a, max(b, g))
+                    d = wedge(b, g, _cosine(floor, -1.0, gone, 1.0, z, y, x, zc, dx, dy))
                 if d < out[z, y, x]:
                     out[z, y, x] = max(d, 0.0)
 

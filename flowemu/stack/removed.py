@@ -27,7 +27,7 @@ def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray, settled: bo
     t, grid, band = stack.topology, stack.grid, np.float32(stack.band)
     value = value.reshape(t.code.shape)
     known = known.reshape(t.code.shape)
-    stays = bool(np.any(value[known] < 0)) or not known.any()
+    stays = not known.any() or float(value[known].min()) < farthest(stack)
     out = np.full(t.code.shape, -band if stays else band, np.float32)
     if stays and known.any():
         box = _box(known)
@@ -38,6 +38,11 @@ def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray, settled: bo
         sides = (1,) if settled else BOTH
         out[box] = redistance(near, grid.cell, grid.cell, grid.z[box[0]], stack.band, sides, there)
     return np.ascontiguousarray(t.on_grid(out))
+
+
+def farthest(stack: FilmStack) -> float:
+    """How far a film may reach beyond its last samples, um: deeper than this in what is gone, all of it is gone."""
+    return float(np.sqrt(2 * stack.grid.cell**2 + stack.grid.dz.max() ** 2))
 
 
 def _level(field: np.ndarray, cell: float, dz: np.ndarray) -> np.ndarray:

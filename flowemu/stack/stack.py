@@ -94,21 +94,22 @@ class FilmStack:
         A field raises the film's `gone` field, or its `top` where it only skims that; films left with
         nothing are dropped. Where nothing is taken the very same stack comes back.
         """
-        films = list(self.films)
-        changed, whole = False, set()
-        for k, field in removed.items():
-            film = films[k]
-            if field is None:
-                whole.add(k)
-            elif not bool(np.any(field > 0)):
-                continue
-            elif skims(film, field, self.grid.cell):
-                films[k] = replace(film, top=np.maximum(film.top, field))
-            else:
-                films[k] = replace(film, gone=field if film.gone is None else np.maximum(film.gone, field))
-            changed = True
-        left = [film for k, film in enumerate(films) if k not in whole]
-        return watch(self, self._recut(left), "carve", set(removed)) if changed else self
+        films = [self._carved(film, removed[k]) if k in removed else film for k, film in enumerate(self.films)]
+        if all(new is old for new, old in zip(films, self.films, strict=True)):
+            return self
+        return watch(self, self._recut([film for film in films if film is not None]), "carve", set(removed))
+
+    def _carved(self, film: Film, field: np.ndarray | None) -> Film | None:
+        """What is left of a film; the very film if nothing of it is taken, None if all of it is."""
+        from flowemu.stack.measure import film_volume
+
+        if field is None or not bool(np.any(field > 0)):
+            return None if field is None else film
+        if skims(film, field, self.grid.cell):
+            new = replace(film, top=np.maximum(film.top, field))
+        else:
+            new = replace(film, gone=field if film.gone is None else np.maximum(film.gone, field))
+        return new if film_volume(new, self.grid) < film_volume(film, self.grid) else film
 
     def without(self, numbers: set[int]) -> FilmStack:
         """The stack with whole films taken away."""

@@ -48,7 +48,7 @@ def _over_corners(stack: FilmStack, top: np.ndarray, open_space: np.ndarray, lea
         if film.gone is not None:
             for face in (film.top, film.floor):
                 if face is not None:
-                    kernel.cover_corners(top, face, film.gone, open_space, np.float32(least))
+                    top = kernel.cover_corners(top, face, film.gone, open_space, np.float32(least))
     return top
 
 

@@ -12,7 +12,7 @@ from flowemu.stack.bodies import Part
 from flowemu.stack.columns import topmost
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.wafer import Freed
-from flowemu.steps.models.directional import Beam
+from flowemu.steps.models.directional import EXPOSED, Beam
 from flowemu.steps.models.isotropic import Arrival, arrive
 from flowemu.steps.models.media import SLOWEST_SHARE
 from flowemu.steps.models.recipe import Etch
@@ -84,27 +84,40 @@ def _open_columns(stack: FilmStack, targets: list[int]) -> np.ndarray:
 
 
 def _isotropic_clear_time(etch: Etch, arrival: Arrival, films: list[int]) -> float:
-    t = etch.stack.topology
-    _, ny, nx = t.code.shape
-    open_columns = _open_columns(etch.stack, films)
-    seen = np.zeros((ny, nx), bool)
-    seen[: open_columns.shape[0], : open_columns.shape[1]] = open_columns
+    """When the last foot of the films is reached in the columns that nothing else covers, s."""
+    seen = _open_columns(etch.stack, films)
     worst = 0.0
     for k in films:
-        sample, times = arrival.of_film(k)
-        mine = seen.reshape(-1)[sample % (ny * nx)]
-        if not mine.any():
+        times = _foot_times(etch.stack, arrival, k, seen)
+        if not len(times):
             return float("inf")
-        worst = max(worst, float(times[mine].max()))
+        worst = max(worst, float(times.max()))
     return worst
 
 
 def _isotropic_expose_time(etch: Etch, arrival: Arrival, film: int) -> float:
-    t = etch.stack.topology
-    times = np.sort(fronts.contact_times(*_contact_edges(t), film, _dense(arrival, t), t.open_space.reshape(-1)))
-    if len(times) == 0:
-        return float("inf")
-    return float(times[min(int(0.9 * len(times)), len(times) - 1)])
+    """When the film shows over 90 % of the area that no mask covers, s; inf if it never does."""
+    etched = [k for k, rate in etch.rates.items() if rate > 0 and etch.stack.films[k].name != "resist"]
+    seen = _open_columns(etch.stack, [*etched, film])
+    shown = int(_open_columns(etch.stack, [film]).sum())
+    over = (_foot_times(etch.stack, arrival, k, seen, film) for k in etched if k != film)
+    times = np.sort(np.concatenate([np.zeros(shown), *over]))
+    needed = int(np.ceil(EXPOSED * seen.sum()))
+    return float(times[needed - 1]) if 0 < needed <= len(times) else float("inf")
+
+
+def _foot_times(
+    stack: FilmStack, arrival: Arrival, film: int, columns: np.ndarray, below: int = -1
+) -> np.ndarray:
+    """When the front is at the foot of a film, s, column by column; with `below` where it stands on that film."""
+    t = stack.topology
+    sample, times = fronts.foot_times(
+        t.samples, t.strides, t.count, t.start, t.interval_code, t.interval_end, film, below, arrival.led_on(film)
+    )
+    _, ny, nx = t.code.shape
+    y, x = (sample // nx) % ny, sample % nx
+    inside = (y < columns.shape[0]) & (x < columns.shape[1])
+    return np.asarray(times[inside][columns[y[inside], x[inside]]])
 
 
 def _free_all_time(arrival: Arrival, parts: list[Part], wanted: tuple[str, ...]) -> float:
@@ -119,14 +132,6 @@ def _free_all_time(arrival: Arrival, parts: list[Part], wanted: tuple[str, ...])
 
 def _contact_edges(t: Any) -> tuple[Any, ...]:
     return t.samples, t.code.reshape(-1), t.strides, t.count, t.start, t.interval_code
-
-
-def _dense(arrival: Arrival, t: Any) -> np.ndarray:
-    """Earliest arrival of any front at every sample, flat, s."""
-    out = np.full(t.code.size, np.inf)
-    for front in arrival.fronts:
-        np.minimum.at(out, front.nodes.sample, front.time)
-    return out
 
 
 def free_time(arrival: Arrival, part: Part) -> Freed:

@@ -9,8 +9,9 @@ from functools import cached_property
 import numpy as np
 
 from flowemu.kernels import fronts, surface
+from flowemu.kernels.carry import carried
 from flowemu.stack.bodies import Part
-from flowemu.stack.removed import complete
+from flowemu.stack.removed import complete, farthest
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.topology import Topology
 from flowemu.stack.wafer import Freed
@@ -48,6 +49,19 @@ class Arrival:
             self._kept[k][sample] = times
         return self._kept[k]
 
+    def led_on(self, k: int) -> np.ndarray:
+        """Times of film `k` at its samples and one beyond them, flat float32 s, inf elsewhere."""
+        t, front, rate = self.stack.topology, self.front_of(k), self.rates.get(k, 0.0)
+        out = np.full(t.code.shape, np.float32(np.inf))
+        if front is None:
+            return out.reshape(-1)
+        mine = np.flatnonzero((front.nodes.film == k) & np.isfinite(front.time))
+        known = np.zeros(t.code.size, bool)
+        known[front.nodes.sample[mine]] = True
+        out.reshape(-1)[front.nodes.sample[mine]] = front.time[mine] * rate + front.beyond[mine]
+        carried(out, known.reshape(t.code.shape), self.stack.grid.z, self.stack.grid.cell, 1)
+        return out.reshape(-1) / np.float32(rate)
+
     @cached_property
     def freed(self) -> dict[Part, Freed]:
         """When parts come free, as far as that was asked for."""
@@ -72,9 +86,9 @@ class Arrival:
             bare = fronts.bare_voids(
                 t.samples, t.code.reshape(-1), t.open_space.reshape(-1), t.strides, t.count, t.start, t.interval_code, k
             )
-            if k > 0 and depth.min(initial=np.inf) >= 0:
+            if k > 0 and depth.min(initial=np.inf) >= farthest(self.stack):
                 yield k, None
-            elif bare.any() or depth.max(initial=-np.inf) > 0:
+            elif bare.any() or depth.max(initial=-np.inf) > -farthest(self.stack):
                 yield k, self._removed_film(k, front.nodes.sample[mine], depth, bare, time * rate)
 
     def _removed_film(

@@ -43,12 +43,12 @@ class Faces:
     partly: np.ndarray
 
     @classmethod
-    def of(cls, stack: FilmStack, nodes: Nodes, source: np.ndarray, within: np.ndarray) -> Faces:
-        """The faces in the listed cells that lie bare to what `source` marks; see `kernels.faces`."""
+    def of(cls, stack: FilmStack, stage: np.ndarray, source: np.ndarray, within: np.ndarray) -> Faces:
+        """The faces of staged films in the listed cells that lie bare to what `source` marks; see `kernels.faces`."""
         t, grid, f = stack.topology, stack.grid, stack.topology.fields
         triangles, films, outer, number, partly = faces.bare_triangles(
             within, t.corner_offsets, t.code.shape, t.row_of, t.values, t.code.reshape(-1), t.count, t.start,
-            t.interval_code, f.top, f.floor, f.gone, nodes.stage, source, t.is_open, t.piece, grid.z, grid.cell,
+            t.interval_code, f.top, f.floor, f.gone, stage, source, t.is_open, t.piece, grid.z, grid.cell,
             grid.cell,
         )  # fmt: skip
         bare = np.flatnonzero(number)
@@ -63,6 +63,14 @@ class Faces:
         starts.mark_ends(
             self.cells, numbers, t.is_mixed, t.code.reshape(-1), t.corner_offsets, nodes.stage, t.strides, self.partly
         )
+
+
+def cells_with_faces(stack: FilmStack, k: int) -> np.ndarray:
+    """Flat numbers of the cells in which film `k` lies bare to the open space."""
+    stage, source = np.zeros(len(stack.films), np.uint8), np.zeros(2 * (len(stack.films) + 1) + 1, np.uint8)
+    stage[k] = 1
+    t = stack.topology
+    return Faces.of(stack, stage, source, t.cells[contents.cells_between(t.contents, stage, source)]).cells
 
 
 def _numbered(cells: np.ndarray, size: int, chosen: np.ndarray | None = None) -> np.ndarray:
@@ -96,7 +104,7 @@ def start_from_void(stack: FilmStack, front: Front) -> None:
     between = contents.cells_between(t.contents, front.nodes.stage, source)
     cells = t.cells[between]
     quiet = _start_from_fields(stack, front, cells, t.contents[between])
-    found = Faces.of(stack, front.nodes, source, cells[~quiet])
+    found = Faces.of(stack, front.nodes.stage, source, cells[~quiet])
     found.mark_ends(stack, front.nodes, cells[quiet])
     _start(stack, front, found, np.zeros((len(found.films), 3)), np.arange(len(found.cells)))
 
@@ -153,8 +161,8 @@ class Passage:
         t = self.stack.topology
         chosen = contents.cells_between(t.contents, self.nodes.stage, self.source)
         if self.thin is not None:
-            return Faces.of(self.stack, self.nodes, self.source, t.cells[chosen[self.thin[chosen]]])
-        found = Faces.of(self.stack, self.nodes, self.source, t.cells[chosen])
+            return Faces.of(self.stack, self.nodes.stage, self.source, t.cells[chosen[self.thin[chosen]]])
+        found = Faces.of(self.stack, self.nodes.stage, self.source, t.cells[chosen])
         found.mark_ends(self.stack, self.nodes, found.cells)
         return found
 

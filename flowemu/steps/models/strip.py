@@ -13,6 +13,7 @@ from flowemu.stack.measure import film_volume
 from flowemu.stack.removed import whole_pieces
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.wafer import Cut, Loss, Wafer
+from flowemu.steps.models.passage import cells_with_faces
 
 SLIVER = 0.5  # cells^3: a piece without a sample below this is rounding
 
@@ -72,8 +73,25 @@ def _pieces(stack: FilmStack, k: int) -> np.ndarray:
 def _reached_pieces(stack: FilmStack, k: int) -> np.ndarray:
     """Roots of the pieces of film `k` that border on the open space."""
     t = stack.topology
-    return np.unique(
+    along_edges = np.unique(
         fronts.bare_pieces(
             t.samples, t.code.reshape(-1), t.strides, t.count, t.start, t.interval_code, t.piece, t.open_roots, k
         )
     )
+    if np.isin(_pieces(stack, k), along_edges).all():
+        return along_edges
+    return np.union1d(along_edges, _pieces_with_faces(stack, k))
+
+
+def _pieces_with_faces(stack: FilmStack, k: int) -> np.ndarray:
+    """Roots of the pieces of film `k` in cells with a bare face of it, which need cross no edge where it is thin."""
+    t = stack.topology
+    cells = cells_with_faces(stack, k)
+    near = np.zeros(t.code.size, bool)
+    for offset in t.corner_offsets:
+        near[cells + offset] = True
+    inner = t.inner
+    ends = t.samples[inner.row]
+    thin = (inner.code == k) & near[ends] & near[ends + t.strides[inner.direction]]
+    own = np.flatnonzero(near & (t.code.reshape(-1) == k))
+    return np.union1d(t.piece[own], t.piece[inner.node[thin]])

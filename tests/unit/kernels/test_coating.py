@@ -145,8 +145,8 @@ def test_corners_of_films_come_to_lie_under_a_coat(seed: int) -> None:
     gone = (np.cos(rng.uniform(0, 6)) * (x - 3.6) + 0.4 * (y - 2.6)).astype(np.float32)
     top = (np.maximum(face, gone) - 0.1).astype(np.float32)
     opened = top > -0.1
-    before, least = top.copy(), 0.05
-    coating.cover_corners(top, face, gone, opened, np.float32(least))
+    before, least = top, 0.05
+    top = coating.cover_corners(before, face, gone, opened, np.float32(least))
     assert (top <= before).all()
     assert np.array_equal(top[~opened], before[~opened])
     corners = corners_of(face, gone)

@@ -137,3 +137,9 @@ def depth_along(t: object, bounds: naive.Bounds, place: tuple[int, ...], other: 
             return min(zero, default=np.inf)
         low = end
     return float("inf")
+
+
+@pytest.mark.parametrize("cosine", [0.99999, 0.9999999, 0.999999999, 1.0])
+def test_one_plane_twice_is_that_plane(cosine: float) -> None:
+    """Two planes that are one to rounding, at the same distance: theirs, and not next to nothing."""
+    assert surface.wedge(1.0, 1.0, cosine) == pytest.approx(1.0, rel=1e-3)

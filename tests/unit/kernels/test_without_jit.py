@@ -1,4 +1,4 @@
-"""Tests of kernels once more with the compiler switched off.
+"""The tests of kernels and of random flows once more with the compiler switched off.
 
 What runs uncompiled is plain Python: an index out of bounds raises there, and is not read past the array's end. Only
 tests on small grids are named here, so that all of them take less than a minute.
@@ -18,9 +18,9 @@ KERNELS = "tests/unit/kernels"
 RUNS = {
     "marching": [f"{KERNELS}/test_march.py", "-k", "not sphere and not fmm and not exact_distance and not fair"],
     "redistancing": [f"{KERNELS}/test_redistance.py", "-k", "not ball and not gradient and not mirrors and not other"],
-    "polygons, coats and wedges": [
-        *(f"{KERNELS}/test_{name}.py" for name in ("polygon", "coating", "surface")), "-k", "not depths_are",
-    ],
+    "polygons and surfaces": [f"{KERNELS}/test_{name}.py" for name in ("polygon", "coating", "surface", "escape")],
+    "regions and faces": [f"{KERNELS}/test_{name}.py" for name in ("regions", "faces", "starts")],
+    "steps": ["tests/property/test_flows_of_steps.py", "-k", "below_a_deposit or does_nothing"],
 }
 
 
