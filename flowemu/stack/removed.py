@@ -13,29 +13,31 @@ from flowemu.stack.topology import Topology
 RINGS = int(BAND) + 1
 
 
-def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray, settled: bool = False) -> np.ndarray:
-    """A removed field over the grid, `(nz, ny, nx)` float32 um, positive where the film goes; all the band if all goes.
+def complete(stack: FilmStack, value: np.ndarray, known: np.ndarray, front: bool = False) -> np.ndarray:
+    """A removed field over the grid, `(nz, ny, nx)` float32 um, positive where the film goes.
 
     Parameters
     ----------
     value, known : flat or shaped as the topology's samples, float32 and bool
         What is known at and right beside the film's samples, to be carried outward from there.
-    settled : bool
-        Whether what stays, the negative side, holds distances already, as a front's times make them. All else is made
-        so, except where it changes sign.
+    front : bool
+        Whether these are a front's depths at all of the film's samples. Then what stays holds distances already, and
+        far from it the field is the band. If not, what is not known stays, and all is made a distance except where it
+        changes sign.
     """
     t, grid, band = stack.topology, stack.grid, np.float32(stack.band)
     value = value.reshape(t.code.shape)
     known = known.reshape(t.code.shape)
-    stays = not known.any() or float(value[known].min()) < farthest(stack)
-    out = np.full(t.code.shape, -band if stays else band, np.float32)
-    if stays and known.any():
-        box = _box(known)
+    stays = known & (value < farthest(stack))
+    goes = front or (known.any() and not stays.any())
+    out = np.full(t.code.shape, band if goes else -band, np.float32)
+    if stays.any():
+        box = _box(stays if front else known)
         near = value[box].astype(np.float32)
         ring = carried(near, known[box], grid.z[box[0]], grid.cell, RINGS)
         there = ring < UNKNOWN
         near = _level(np.where(there, near, -band), grid.cell, grid.dz[box[0]])
-        sides = (1,) if settled else BOTH
+        sides = (1,) if front else BOTH
         out[box] = redistance(near, grid.cell, grid.cell, grid.z[box[0]], stack.band, sides, there)
     return np.ascontiguousarray(t.on_grid(out))
 
@@ -61,7 +63,7 @@ def _level(field: np.ndarray, cell: float, dz: np.ndarray) -> np.ndarray:
 
 
 def _box(known: np.ndarray) -> tuple[slice, slice, slice]:
-    """The box of what is known, grown by the rings that it is carried outward."""
+    """The box of what is marked, grown by the rings that it is carried outward."""
     out = []
     for axis in range(3):
         at = np.flatnonzero(known.any(axis=tuple({0, 1, 2} - {axis})))

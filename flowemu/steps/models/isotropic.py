@@ -102,7 +102,7 @@ class Arrival:
             value[bare] = reach + distance_outside(stack, t, k)[bare]
         known = bare
         known[sample] = True
-        return complete(stack, value, known, settled=True)
+        return complete(stack, value, known, front=True)
 
 
 def distance_outside(stack: FilmStack, topology: Topology, k: int) -> np.ndarray:
