@@ -71,19 +71,26 @@ def _nearest_opening(
     best = None
     for cut in through:
         printed = [p for p in view.events(Printed) if p.mask == cut.mask and p.step < cut.step][-1]
-        away = np.where(event.columns, -printed.opened, np.inf)
-        iy, ix = (int(i) for i in np.unravel_index(int(np.argmin(away)), away.shape))
-        distance = float(away[iy, ix])
-        place = _opening_place(printed.opened, iy, ix, grid)
+        away = -_at(printed.opened, event.outline, grid)
+        k = int(np.argmin(away))
+        distance, place = float(away[k]), _opening_place(printed.opened, event.outline[k], grid)
         if best is None or distance < best[1]:
             best = (printed, distance, place)
     return best
 
 
-def _opening_place(opened: np.ndarray, iy: int, ix: int, grid: Any) -> tuple[float, float]:
-    """The nearest place that is opened, from the sample at (iy, ix), um."""
+def _at(field: np.ndarray, points: np.ndarray, grid: Any) -> np.ndarray:
+    """A planar field `(ny, nx)` between its samples at points `(n, 2)` um, `(n,)`."""
+    from scipy.ndimage import map_coordinates
+
+    y, x = (points[:, 1] - grid.y[0]) / grid.cell, (points[:, 0] - grid.x[0]) / grid.cell
+    return np.asarray(map_coordinates(field.astype(float), [y, x], order=1, mode="nearest"))
+
+
+def _opening_place(opened: np.ndarray, point: np.ndarray, grid: Any) -> tuple[float, float]:
+    """The sample in an opening that is nearest to a point, um; the point itself if nothing is opened."""
     ys, xs = np.nonzero(opened > 0)
     if len(xs) == 0:
-        return float(grid.x[ix]), float(grid.y[iy])
-    k = int(np.argmin((xs - ix) ** 2 + (ys - iy) ** 2))
+        return float(point[0]), float(point[1])
+    k = int(np.argmin((grid.x[xs] - point[0]) ** 2 + (grid.y[ys] - point[1]) ** 2))
     return float(grid.x[xs[k]]), float(grid.y[ys[k]])

@@ -59,4 +59,5 @@ def _severity(view: Any, loss: Any) -> str | None:
     return None
 
 
-CHECK = Check("attacked film", (CODE,), "geometry", run)
+SOURCES = ("common practice: selectivity is finite, and a film that no step means to etch is watched in every etch",)
+CHECK = Check("attacked film", (CODE,), "geometry", run, sources=SOURCES)

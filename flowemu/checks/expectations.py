@@ -34,4 +34,5 @@ def run(view: Any) -> Iterator[Finding]:
         yield Finding(CODE, "error", view.step, outcome.film, outcome.part, at, text, cause)
 
 
-CHECK = Check("expectations", (CODE,), "geometry", run)
+SOURCES = ("the flow's own expect section",)
+CHECK = Check("expectations", (CODE,), "geometry", run, sources=SOURCES)

@@ -79,5 +79,6 @@ def _play(play: tuple[float | None, ...] | None) -> str:
     return ", ".join(f"{axis} -{low} +{high}" for axis, low, high in pairs) + " um"
 
 
-CHECK = Check("loose parts", (ADRIFT, CAPTIVE, CUT, RESIDUE), "geometry", run)
+SOURCES = ("common practice: a part that nothing joins to the wafer is lost unless other parts hold it captive",)
+CHECK = Check("loose parts", (ADRIFT, CAPTIVE, CUT, RESIDUE), "geometry", run, sources=SOURCES)
 """Common practice: a part that nothing holds after its release is lost in the rinse."""

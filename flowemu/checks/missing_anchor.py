@@ -43,4 +43,5 @@ def run(view: Any) -> Iterator[Finding]:
         yield Finding(CODE, "error", event.step, lost.film, event.part, at, text, cause, size_um=lost.distance)
 
 
-CHECK = Check("missing anchor", (CODE,), "geometry", run)
+SOURCES = ("common practice: a film is anchored where an opening lets it down to what lies below the sacrificial film",)
+CHECK = Check("missing anchor", (CODE,), "geometry", run, sources=SOURCES)

@@ -49,4 +49,5 @@ def _time(seconds: float) -> str:
     return f"{seconds:.3g} s" if seconds < 120 else f"{seconds / 60:.3g} min"
 
 
-CHECK = Check("not free", (CODE,), "geometry", run)
+SOURCES = ("common practice: a release ends when the sacrificial film is gone from under every part that must move",)
+CHECK = Check("not free", (CODE,), "geometry", run, sources=SOURCES)

@@ -24,4 +24,5 @@ def run(view: Any) -> Iterator[Finding]:
         yield Finding(CODE, "warning", event.step, event.film, None, event.at, event.text, cause, size_um=event.size)
 
 
-CHECK = Check("unresolved", (CODE,), "geometry", run)
+SOURCES = ("the resolution of the grid: what is thinner than two cells is told and not guessed",)
+CHECK = Check("unresolved", (CODE,), "geometry", run, sources=SOURCES)

@@ -36,6 +36,10 @@ def _contents() -> Iterator[str]:
     yield from (f"  {name:<12} {text}" for name, text in _sections().items())
 
 
+def _rests_on(sources: tuple[str, ...]) -> str:
+    return "Rests on " + "; ".join(sources) + "."
+
+
 def _first(doc: str) -> str:
     """The first sentence of a docstring."""
     return " ".join(doc.split("\n\n")[0].split())
@@ -61,10 +65,10 @@ def _explanations(word: str) -> Iterator[str]:
 
     kinds = step_kinds()
     if word in kinds:
-        yield f"step {word}\n\n{kinds[word].doc}"
+        yield f"step {word}\n\n{kinds[word].doc}\n\n{_rests_on(kinds[word].sources)}"
     check = checks().get(word) or finding_codes().get(word)
     if check is not None:
-        yield f"check {check.name}, reports {', '.join(check.codes)}\n\n{check.doc}"
+        yield f"check {check.name}, reports {', '.join(check.codes)}\n\n{check.doc}\n\n{_rests_on(check.sources)}"
     if word in _sections():
         yield "\n".join(_section(word))
     yield from (text for kind in kinds.values() if (text := _setting(kind.verb, kind.settings, word)))

@@ -35,11 +35,11 @@ def _row(stack: FilmStack, part: Part, event: Loosened | None) -> PartRow:
     box, volume = box_and_volume(stack, part)
     contact = contact_area(stack, part.pieces) if part.held else 0.0
     if part.held:
-        return PartRow(part.name, names, volume, box, "held", contact, None)  # type: ignore[arg-type]
+        return PartRow(part.name, names, volume, box, "held", contact, None)
     if event is not None:
         return PartRow(part.name, names, volume, box, event.state, contact, _open(event.play))  # type: ignore[arg-type]
     if part.at_side:
-        return PartRow(part.name, names, volume, box, "cut by the window", contact, None)  # type: ignore[arg-type]
+        return PartRow(part.name, names, volume, box, "cut by the window", contact, None)
     verdict = judge(stack, part)
     return PartRow(part.name, names, volume, box, verdict.state, contact, _open(verdict.play))  # type: ignore[arg-type]
 

@@ -129,8 +129,9 @@ def part_samples(stack: FilmStack, part: Part) -> np.ndarray:
     """Samples in the part, over the grid, `(nz, ny, nx)` bool."""
     t = stack.topology
     roots = t.piece[: t.code.size].reshape(t.code.shape)
-    inside = (t.code >= 0) & np.isin(roots, np.array(sorted(part.pieces)))
-    return t.on_grid(inside)
+    mine = np.zeros(len(t.piece), bool)
+    mine[list(part.pieces)] = True
+    return t.on_grid(mine[roots])
 
 
 def part_columns(stack: FilmStack, part: Part) -> np.ndarray:
@@ -148,14 +149,14 @@ def part_columns(stack: FilmStack, part: Part) -> np.ndarray:
 
 def box_and_volume(
     stack: FilmStack, part: Part, points: np.ndarray | None = None
-) -> tuple[tuple[float, ...], float]:
+) -> tuple[tuple[float, float, float, float, float, float], float]:
     """Box `(x0, y0, z0, x1, y1, z1)` in um and volume in um3 of a part, from its `surface_points` if given."""
     from flowemu.stack.measure import film_volume
 
     grid = stack.grid
     columns = part_columns(stack, part)
     if not columns.any():
-        return (0.0,) * 6, 0.0
+        return (0.0, 0.0, 0.0, 0.0, 0.0, 0.0), 0.0
     ys, xs = np.nonzero(columns)
     low, high = np.inf, -np.inf
     points = surface_points(stack, part) if points is None else points

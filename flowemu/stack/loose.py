@@ -26,15 +26,15 @@ class Verdict:
     Attributes
     ----------
     state : str
-        `captive` or `adrift`.
+        `captive` or `adrift`; `cut by the window` where its end lies outside.
     play : 6 floats or None
-        Free travel along -x, +x, -y, +y, -z, +z in um; None where it has no end in the window.
+        Free travel along -x, +x, -y, +y, -z, +z in um; None where it has no end in the window. None if not looked for.
     searched : str
         What was tried, in words.
     """
 
     state: str
-    play: tuple[float | None, ...]
+    play: tuple[float | None, ...] | None
     searched: str
 
 

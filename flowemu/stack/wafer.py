@@ -87,7 +87,8 @@ class Cut:
 class Loosened:
     """A body that nothing holds was found loose after a release; see `stack.loose`.
 
-    `sliver` marks a nameless one too small to be a part.
+    `columns (ny, nx)` are those it lies in, `outline (n, 2)` um the points in x and y at which the grid's edges leave
+    it; `sliver` marks a nameless one too small to be a part.
     """
 
     step: int
@@ -99,6 +100,7 @@ class Loosened:
     play: tuple[float | None, ...] | None
     searched: str
     columns: np.ndarray
+    outline: np.ndarray
     sliver: bool = False
 
 

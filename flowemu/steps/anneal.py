@@ -53,4 +53,5 @@ def heights(profile: Any, settings: AnnealSettings, tools: Any) -> Any:
     return profile
 
 
-KIND = StepKind("anneal", AnnealSettings, apply, heights)
+SOURCES = ("common practice: a furnace densifies glasses and relaxes polysilicon; rates are the process data's",)
+KIND = StepKind("anneal", AnnealSettings, apply, heights, sources=SOURCES)

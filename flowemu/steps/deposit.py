@@ -95,4 +95,8 @@ def heights(profile: Any, settings: DepositSettings, tools: Any) -> Any:
     return profile.raised(settings.thickness)
 
 
-KIND = StepKind("deposit", DepositSettings, apply, heights)
+SOURCES = (
+    "geometry: a conformal film is the offset of the exact distance from what the open space reaches",
+    "common practice: step coverage is the thickness on an upright wall over that on a flat",
+)
+KIND = StepKind("deposit", DepositSettings, apply, heights, sources=SOURCES)

@@ -53,4 +53,8 @@ def heights(profile: Any, settings: EtchSettings, tools: Any) -> Any:
     return profile.cut(settings, tools)
 
 
-KIND = StepKind("etch", EtchSettings, apply, heights)
+SOURCES = (
+    "J. A. Sethian, PNAS 93 (1996) 1591, doi:10.1073/pnas.93.4.1591, for arrival times",
+    "common practice: an overetch is a share of the time that clears the flat; rates come from the process data",
+)
+KIND = StepKind("etch", EtchSettings, apply, heights, sources=SOURCES)

@@ -32,4 +32,5 @@ def heights(profile: Any, settings: InspectSettings, tools: Any) -> Any:
     return profile
 
 
-KIND = StepKind("inspect", InspectSettings, apply, heights)
+SOURCES = ("common practice: a flow is looked at between its steps",)
+KIND = StepKind("inspect", InspectSettings, apply, heights, sources=SOURCES)

@@ -94,4 +94,5 @@ def heights(profile: Any, settings: PatternSettings, tools: Any) -> Any:
     return profile.covered(settings.resist.thickness)
 
 
-KIND = StepKind("pattern", PatternSettings, apply, heights)
+SOURCES = ("common practice: polarity, bias, overlay and wall angle as a traveler states them; resist is spun level",)
+KIND = StepKind("pattern", PatternSettings, apply, heights, sources=SOURCES)

@@ -46,4 +46,5 @@ def heights(profile: Any, settings: PolishSettings, tools: Any) -> Any:
     return profile
 
 
-KIND = StepKind("polish", PolishSettings, apply, heights)
+SOURCES = ("common practice: chemical-mechanical polishing takes off what stands above a level plane",)
+KIND = StepKind("polish", PolishSettings, apply, heights, sources=SOURCES)

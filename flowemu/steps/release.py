@@ -56,4 +56,8 @@ def heights(profile: Any, settings: ReleaseSettings, tools: Any) -> Any:
     return profile.cut(settings, tools)
 
 
-KIND = StepKind("release", ReleaseSettings, apply, heights)
+SOURCES = (
+    "J. A. Sethian, PNAS 93 (1996) 1591, doi:10.1073/pnas.93.4.1591, for arrival times",
+    "common practice: what is neither held nor captive is lost in the rinse and in drying",
+)
+KIND = StepKind("release", ReleaseSettings, apply, heights, sources=SOURCES)

@@ -43,4 +43,5 @@ def heights(profile: Any, settings: StripSettings, tools: Any) -> Any:
     return profile
 
 
-KIND = StepKind("strip", StripSettings, apply, heights, short="film")
+SOURCES = ("common practice: a strip takes all of a film that the bath can reach and leaves what is buried",)
+KIND = StepKind("strip", StripSettings, apply, heights, short="film", sources=SOURCES)

@@ -62,3 +62,10 @@ def test_every_flow_reads_and_is_run_by_an_end_to_end_test(path: Path) -> None:
 @pytest.mark.parametrize("name", [path.stem for path in FLOWS if "_" in path.stem])
 def test_every_broken_twin_has_its_sound_one(name: str) -> None:
     assert (ROOT / "flows" / f"{name.split('_')[0]}.yaml").is_file()
+
+
+@pytest.mark.parametrize("kind", [*STEPS, *CHECKS], ids=lambda kind: getattr(kind, "verb", None) or kind.name)
+def test_it_says_what_it_rests_on(kind: StepKind | Check) -> None:
+    """A publication, or that it is common practice."""
+    assert kind.sources
+    assert all(len(source) > 20 for source in kind.sources)

@@ -47,7 +47,7 @@ def test_the_missing_anchor_is_the_one_error_and_is_explained(ran: Ran) -> None:
     assert "mask ANCHOR (step 10)" in error["text"]
     distance = re.search(r"the nearest is ([0-9.]+) um away", error["text"])
     assert distance is not None
-    assert float(distance.group(1)) == pytest.approx(23.0, abs=CELL)
+    assert float(distance.group(1)) == pytest.approx(23.0, abs=TENTH_OF_A_CELL)
     assert "step 18 (release, hf 49) took away" in error["cause"]
     assert "glass" in error["cause"]
     states = {part["name"]: part["state"] for part in done.result["parts"]}

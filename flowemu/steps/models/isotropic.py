@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -124,28 +125,46 @@ def distance_outside(stack: FilmStack, topology: Topology, k: int) -> np.ndarray
 def arrive(stack: FilmStack, rates: Mapping[int, float], limit: float = np.inf) -> Arrival:
     """Arrival times of an isotropic etch from the open space.
 
+    While one group's front is marched, in a thread that lets go of the interpreter's lock, the next one is begun.
+
     Parameters
     ----------
     rates : film number to um/s; films left out or at 0 are not etched
     limit : s; fronts are followed a few cells beyond where they are by then
     """
+    groups = groups_by_rate(rates)
     done: list[Front] = []
-    for group in groups_by_rate(rates):
-        nodes = Nodes.of(stack.topology, group, media_of(rates, group, len(stack.films)))
-        slowness = (1.0 / np.array([rates.get(k) or 1.0 for k in range(len(stack.films))]))[nodes.film]
-        reach = limit + 1.5 * stack.band * float(np.max(slowness, initial=0.0))
-        done.append(_follow(stack, nodes, slowness, done, reach))
+    with ThreadPoolExecutor(1) as worker:
+        begun = _begin(stack, rates, groups[0], []) if groups else None
+        for following in [*groups[1:], None]:
+            if begun is None:
+                break
+            front, passages = begun
+            exact = np.isfinite(front.time)
+            for passage, earlier in zip(passages, done, strict=True):
+                passage.start(front, earlier)
+            reach = limit + 1.5 * stack.band * float(np.max(front.slowness, initial=0.0))
+            marching = worker.submit(marched, stack, front, np.where(exact, np.inf, front.slowness), reach)
+            before = [*(earlier.nodes for earlier in done), front.nodes]
+            begun = _begin(stack, rates, following, before) if following else None
+            done.append(_to_and_fro(stack, marching.result(), exact, reach))
     return Arrival(stack, dict(rates), tuple(done))
 
 
-def _follow(stack: FilmStack, nodes: Nodes, slowness: np.ndarray, earlier: list[Front], reach: float) -> Front:
-    """A group's front from the void and from the fronts before it, and to and fro between its own films."""
+def _begin(
+    stack: FilmStack, rates: Mapping[int, float], group: list[int], before: list[Nodes]
+) -> tuple[Front, list[Passage]]:
+    """A group's front where it starts from the void, and the faces that fronts at the nodes before it come through."""
+    nodes = Nodes.of(stack.topology, group, media_of(rates, group, len(stack.films)))
+    slowness = (1.0 / np.array([rates.get(k) or 1.0 for k in range(len(stack.films))]))[nodes.film]
     front = Front(nodes, np.full(len(nodes.sample), np.inf), np.zeros(len(nodes.sample)), slowness)
     start_from_void(stack, front)
-    exact = np.isfinite(front.time)
-    for other in earlier:
-        Passage(stack, nodes, other.nodes).start(front, other)
-    front = marched(stack, front, np.where(exact, np.inf, slowness), reach)
+    return front, [Passage(stack, nodes, earlier) for earlier in before]
+
+
+def _to_and_fro(stack: FilmStack, front: Front, exact: np.ndarray, reach: float) -> Front:
+    """A front that passes on from film to film of its own group until none of them is reached sooner."""
+    nodes, slowness = front.nodes, front.slowness
     if np.sum(nodes.stage) == 1:
         return front
     one_rate = len(np.unique(nodes.medium[nodes.stage > 0])) == 1

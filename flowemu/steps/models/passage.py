@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import cached_property
 
 import numpy as np
 
@@ -155,9 +154,10 @@ class Passage:
         self.source = np.zeros(2 * (films + 1) + 1, np.uint8)
         self.source[films + 1 :][:films][earlier.stage > 0] = 1
         self.before = np.full(len(earlier.sample), np.inf)
+        self.faces = self._faces()
+        self.base = np.full((len(self.faces.films), 3), np.inf)  # s, when the earlier front gets to triangles' corners
 
-    @cached_property
-    def faces(self) -> Faces:
+    def _faces(self) -> Faces:
         t = self.stack.topology
         chosen = contents.cells_between(t.contents, self.nodes.stage, self.source)
         if self.thin is not None:
@@ -165,11 +165,6 @@ class Passage:
         found = Faces.of(self.stack, self.nodes.stage, self.source, t.cells[chosen])
         found.mark_ends(self.stack, self.nodes, found.cells)
         return found
-
-    @cached_property
-    def base(self) -> np.ndarray:
-        """When the earlier front gets to each triangle's corners, as far as it is known, `(n, 3)` s."""
-        return np.full((len(self.faces.films), 3), np.inf)
 
     def start(self, front: Front, earlier: Front) -> None:
         """Lower the front's times by what the earlier front has reached since the last call."""

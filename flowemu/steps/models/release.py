@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 
 from flowemu.stack.bodies import Part, box_and_volume, find_parts, part_columns, surface_points
-from flowemu.stack.loose import judge
+from flowemu.stack.loose import Verdict, judge
 from flowemu.stack.removed import whole_pieces
 from flowemu.stack.stack import FilmStack
 from flowemu.stack.wafer import Loosened, Wafer
@@ -29,24 +29,22 @@ def let_go(wafer: Wafer, tools: Any) -> Wafer:
             gone.append(part)
             continue
         sliver = not part.named and volume < SLIVER * stack.grid.cell**3
-        names = tuple(stack.films[k].name for k in sorted(part.films))
-        if sliver:
-            events.append(
-                Loosened(tools.step, part.name, names, "adrift", volume, box, None, "", part_columns(stack, part), True)  # type: ignore[arg-type]
-            )
-            gone.append(part)
-            continue
-        if part.at_side:
-            state, play, searched = "cut by the window", None, "its end lies outside the window"
-        else:
-            verdict = judge(stack, part, points)
-            state, play, searched = verdict.state, verdict.play, verdict.searched
-        events.append(
-            Loosened(tools.step, part.name, names, state, volume, box, play, searched, part_columns(stack, part))  # type: ignore[arg-type]
-        )
-        if state == "adrift":
+        verdict = _verdict(stack, part, points, sliver)
+        films = tuple(stack.films[k].name for k in sorted(part.films))
+        found = (verdict.state, volume, box, verdict.play, verdict.searched)
+        events.append(Loosened(tools.step, part.name, films, *found, part_columns(stack, part), points[:, :2], sliver))
+        if verdict.state == "adrift":
             gone.append(part)
     return wafer.now(_without(stack, gone) if gone else stack, *events)
+
+
+def _verdict(stack: FilmStack, part: Part, points: np.ndarray, sliver: bool) -> Verdict:
+    """Whether a loose body can leave; residue always does, and of a part cut by the window it is not known."""
+    if sliver:
+        return Verdict("adrift", None, "")
+    if part.at_side:
+        return Verdict("cut by the window", None, "its end lies outside the window")
+    return judge(stack, part, points)
 
 
 def _without(stack: FilmStack, parts: list[Part]) -> FilmStack:

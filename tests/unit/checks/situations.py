@@ -26,6 +26,7 @@ RELEASE = 11
 BOX = (5.0, 5.0, 2.0, 9.0, 9.0, 4.0)
 COLUMNS = np.zeros((16, 16), bool)
 COLUMNS[5:9, 5:9] = True
+OUTLINE = np.array([(x, y) for x in np.arange(5.0, 9.5, 0.5) for y in np.arange(5.0, 9.5, 0.5) if {x, y} & {5.0, 9.0}])
 
 
 @cache
@@ -70,7 +71,7 @@ def loosened(part: str = "plate", state: str = "adrift", **changed: Any) -> Loos
     """A body of the film poly, 4 x 4 um about (7, 7), found loose in the release."""
     usual: dict[str, Any] = {
         "films": ("poly",), "volume": 32.0, "box": BOX, "play": (None,) * 6, "searched": "it can leave straight up",
-        "columns": COLUMNS,
+        "columns": COLUMNS, "outline": OUTLINE,
     }  # fmt: skip
     return Loosened(RELEASE, part, state=state, **{**usual, **changed})
 

@@ -60,17 +60,21 @@ def test_a_part_at_the_windows_side_is_cut() -> None:
     assert row.state == "cut by the window"
 
 
+NOWHERE = np.empty((0, 2))
+
+
 def test_what_the_release_found_goes_before_what_is_there_now() -> None:
     columns = np.zeros((24, 24), bool)
     play = (0.5, 0.5, 0.5, 0.5, 0.2, None)
-    event = Loosened(11, "plate", ("plate",), "captive", 100.0, (0.0,) * 6, play, "all was tried", columns)
+    event = Loosened(11, "plate", ("plate",), "captive", 100.0, (0.0,) * 6, play, "all was tried", columns, NOWHERE)
     (row,) = rows(plate(8.0), event)
     assert (row.state, row.play_um) == ("captive", (0.5, 0.5, 0.5, 0.5, 0.2, float("inf")))
 
 
 def test_a_part_that_was_washed_away_keeps_its_last_row() -> None:
     columns = np.zeros((24, 24), bool)
-    event = Loosened(11, "plate", ("plate",), "adrift", 128.0, (8.0, 8.0, 1.8, 16.0, 16.0, 3.8), None, "up", columns)
+    box = (8.0, 8.0, 1.8, 16.0, 16.0, 3.8)
+    event = Loosened(11, "plate", ("plate",), "adrift", 128.0, box, None, "up", columns, NOWHERE)
     (row,) = rows(stacks.bare(stacks.even_grid(24, -3, 10, ny=24)), event)
     assert (row.name, row.state, row.volume_um3, row.play_um) == ("plate", "adrift", 128.0, None)
 

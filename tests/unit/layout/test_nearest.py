@@ -8,8 +8,8 @@ from shapely import MultiPolygon, Point, Polygon
 
 from flowemu.layout import merge
 from flowemu.layout.contours import segments_of
-from flowemu.layout.nearest import contains, nearest
 from tests.unit.layout.drawings import circle, square
+from tests.unit.layout.nearest import contains, nearest
 
 UNIT = merge([square(0, 0, 1, 1)])
 

@@ -11,7 +11,7 @@ import pytest
 
 from flowemu.layout import read_layout, thin_places
 from flowemu.layout.contours import signed_area
-from flowemu.layout.nearest import nearest
+from tests.unit.layout.nearest import nearest
 
 LAYOUTS = Path(__file__).parents[3] / "layouts"
 DIE = LAYOUTS / "saltmarsh.gds"
