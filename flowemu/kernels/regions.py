@@ -48,6 +48,23 @@ def paint(code, top, floor, gone, has_floor, has_gone, k):
                 code[i] = -1 - k
 
 
+@njit(cache=True, parallel=True)
+def gather(a, b, c, d, samples, values, column, number):
+    """Enter the values of up to four flat fields at samples into `values (m, fields)` from a column on.
+
+    Four at a time, since each row of the table is then fetched once for all of them.
+    """
+    for s in prange(samples.size):
+        i = samples[s]
+        values[s, column] = a[i]
+        if number > 1:
+            values[s, column + 1] = b[i]
+        if number > 2:
+            values[s, column + 2] = c[i]
+        if number > 3:
+            values[s, column + 3] = d[i]
+
+
 @njit(cache=True)
 def films_in(codes, films):
     """Which of the films occur among the codes, `(films,)` bool."""

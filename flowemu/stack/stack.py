@@ -22,13 +22,10 @@ SKIN = 0.25  # of a cell: what a shallow etch takes off a film's top is a change
 
 def skims(film: Film, removed: np.ndarray, cell: float) -> bool:
     """Whether a removed field takes no more than a skin off the film's top, and not half of its thickness."""
-    near = np.abs(film.top) < 1.5 * cell
-    if film.floor is not None:
-        near &= film.floor > film.top
-    depth = removed[near] - film.top[near]
-    if film.floor is None:
-        return bool((depth < SKIN * cell).all())
-    return bool((depth < np.minimum(SKIN * cell, 0.5 * (film.floor[near] - film.top[near]))).all())
+    from flowemu.kernels import skin
+
+    floor = film.top if film.floor is None else film.floor
+    return bool(skin.skims(film.top, floor, film.floor is not None, removed, 1.5 * cell, SKIN * cell, 0.5))
 
 
 @dataclass(frozen=True, eq=False)

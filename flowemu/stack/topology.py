@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from functools import cached_property
 
@@ -54,8 +55,10 @@ class FieldTable:
     def gather(self, samples: np.ndarray) -> np.ndarray:
         """Values of all fields at flat sample numbers, `(len(samples), fields)` float32."""
         values = np.empty((len(samples), len(self.arrays)), np.float32)
-        for column, array in enumerate(self.arrays):
-            values[:, column] = array.reshape(-1)[samples]
+        flat = [np.ascontiguousarray(array).reshape(-1) for array in self.arrays]
+        for column in range(0, len(flat), 4):
+            some = flat[column : column + 4]
+            regions.gather(*some, *[some[0]] * (4 - len(some)), samples, values, column, len(some))
         return values
 
 
@@ -186,6 +189,19 @@ class Topology:
         """Which films have a sample or an interval, `(films,)` bool."""
         films = len(self.fields.top)
         return regions.films_in(self.code.reshape(-1), films) | regions.films_in(self.interval_code, films)
+
+    @contextmanager
+    def numbered(self, cells: np.ndarray, numbers: np.ndarray | int | None = None) -> Iterator[np.ndarray]:
+        """Numbers of some cells by their flat place, int32, -1 elsewhere; good within the `with` alone."""
+        self._numbers[cells] = np.arange(len(cells)) if numbers is None else numbers
+        try:
+            yield self._numbers
+        finally:
+            self._numbers[cells] = -1
+
+    @cached_property
+    def _numbers(self) -> np.ndarray:
+        return np.full(self.code.size, -1, np.int32)
 
     @cached_property
     def is_mixed(self) -> np.ndarray:

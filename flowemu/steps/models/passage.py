@@ -57,11 +57,11 @@ class Faces:
     def mark_ends(self, stack: FilmStack, nodes: Nodes, more: np.ndarray) -> None:
         """Mark as partly bare the cells beside which the bare surface ends; it goes on into the cells `more`."""
         t = stack.topology
-        numbers = _numbered(self.cells, t.code.size)
-        numbers[more] = len(self.cells)
-        starts.mark_ends(
-            self.cells, numbers, t.is_mixed, t.code.reshape(-1), t.corner_offsets, nodes.stage, t.strides, self.partly
-        )
+        with t.numbered(np.concatenate([self.cells, more])) as numbers:
+            starts.mark_ends(
+                self.cells, numbers, t.is_mixed, t.code.reshape(-1), t.corner_offsets, nodes.stage, t.strides,
+                self.partly,
+            )  # fmt: skip
 
 
 def cells_with_faces(stack: FilmStack, k: int) -> np.ndarray:
@@ -72,14 +72,6 @@ def cells_with_faces(stack: FilmStack, k: int) -> np.ndarray:
     return Faces.of(stack, stage, source, t.cells[contents.cells_between(t.contents, stage, source)]).cells
 
 
-def _numbered(cells: np.ndarray, size: int, chosen: np.ndarray | None = None) -> np.ndarray:
-    """Number of every cell, or of the chosen ones, by its flat place, `(size,)` int32, -1 elsewhere."""
-    out = np.full(size, -1, np.int32)
-    chosen = np.arange(len(cells)) if chosen is None else chosen
-    out[cells[chosen]] = chosen
-    return out
-
-
 def _start(stack: FilmStack, front: Front, found: Faces, base: np.ndarray, chosen: np.ndarray) -> None:
     """Lower the front's times (its own arrays) near the faces in the chosen cells."""
     if not len(chosen):
@@ -87,13 +79,14 @@ def _start(stack: FilmStack, front: Front, found: Faces, base: np.ndarray, chose
     t, grid, nodes = stack.topology, stack.grid, front.nodes
     reach = starts.sample_reach(found.cells[chosen], found.partly[chosen], t.code.shape)[nodes.sample]
     listed = np.flatnonzero(reach >= 0)
-    starts.nearest_starts(
-        listed, nodes.sample, nodes.film, nodes.place, reach[listed], _numbered(found.cells, t.code.size, chosen),
-        found.box, found.first, found.triangles, found.films, base,
-        np.minimum.reduceat(base.min(axis=1), found.first[:-1]),
-        front.slowness, nodes.medium, t.code.reshape(-1), t.is_mixed, t.row_of, t.values, t.fields.top, t.fields.floor,
-        t.fields.gone, t.code.shape, grid.z, grid.cell, grid.cell, front.time, front.beyond,
-    )  # fmt: skip
+    least = np.minimum.reduceat(base.min(axis=1), found.first[:-1])
+    with t.numbered(found.cells[chosen], chosen) as numbers:
+        starts.nearest_starts(
+            listed, nodes.sample, nodes.film, nodes.place, reach[listed], numbers, found.box, found.first,
+            found.triangles, found.films, base, least, front.slowness, nodes.medium, t.code.reshape(-1), t.is_mixed,
+            t.row_of, t.values, t.fields.top, t.fields.floor, t.fields.gone, t.code.shape, grid.z, grid.cell,
+            grid.cell, front.time, front.beyond,
+        )  # fmt: skip
 
 
 def start_from_void(stack: FilmStack, front: Front) -> None:
@@ -116,9 +109,8 @@ def _start_from_fields(stack: FilmStack, front: Front, cells: np.ndarray, found:
         t.piece,
     )  # fmt: skip
     ends = (field < 0).astype(np.uint8)
-    starts.mark_ends(
-        cells, _numbered(cells, code.size), t.is_mixed, code, t.corner_offsets, nodes.stage, t.strides, ends
-    )
+    with t.numbered(cells) as numbers:
+        starts.mark_ends(cells, numbers, t.is_mixed, code, t.corner_offsets, nodes.stage, t.strides, ends)
     near = np.zeros(code.size, bool)
     plain.mark_around(cells[ends > 0], t.code.shape, starts.FAR + 1, near)
     quiet = ~near[cells]
