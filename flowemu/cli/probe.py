@@ -30,7 +30,7 @@ def command(
 
     from flowemu.cli._progress import progress
     from flowemu.engine import run_flow
-    from flowemu.engine.probe import inside, probe
+    from flowemu.engine.points import inside, probe
     from flowemu.flow.load import load_flow
     from flowemu.stack.grid import Grid
 

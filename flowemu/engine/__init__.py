@@ -5,7 +5,7 @@ from __future__ import annotations
 from importlib import import_module
 from typing import Any
 
-_PUBLIC = {"probe": "probe", "run_flow": "run"}
+_PUBLIC = {"probe": "points", "run_flow": "run"}
 __all__ = list(_PUBLIC)
 
 

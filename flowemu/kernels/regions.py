@@ -95,11 +95,12 @@ def _laid_on(v, reach, k, j, ti, bi, gi):
     """Whether film k was laid on a face of film j that still is the one nearest to a sample in j, of values v."""
     if bi[k] < 0 or v[bi[k]] >= 0:
         return False
-    depth = v[bi[k]]
-    limit = SAME_FACE * reach
-    if abs(v[ti[j]] - depth) < limit:
-        return True
-    return (gi[j] >= 0 and abs(v[gi[j]] - depth) < limit) or (bi[j] >= 0 and abs(v[bi[j]] + depth) < limit)
+    nearest = v[ti[j]]
+    if gi[j] >= 0:
+        nearest = max(nearest, v[gi[j]])
+    if bi[j] >= 0:
+        nearest = max(nearest, -v[bi[j]])
+    return abs(nearest - v[bi[k]]) < SAME_FACE * reach
 
 
 @njit(cache=True)

@@ -99,3 +99,16 @@ def test_everything_is_open_above_and_nothing_within():
     opened = t.on_grid(t.open_space)
     assert opened[-1].all()
     assert not opened[t.on_grid(t.code) >= 0].any()
+
+
+@pytest.mark.parametrize("low", [0.2, 0.45, 0.8])
+@pytest.mark.parametrize("gap", [0.2, 0.4, 0.6, 0.8, 1.2])
+def test_a_gap_opened_under_a_film_parts_it_from_what_it_was_laid_on(low, gap):
+    """The film below is lowered by the gap on its whole top: the upper one is loose, its foot where it was laid."""
+    stack = coat(coat(stacks.bare(stacks.even_grid(8, -3, 8), low), stacks.blank("a"), 2.0), stacks.blank("b"), 1.5)
+    level = stack.grid.z - (low + 2.0 - gap)
+    removed = np.broadcast_to(level[:, None, None].astype(np.float32), stack.grid.shape)
+    after = stack.carve({1: np.ascontiguousarray(removed)})
+    (part,) = find_parts(after, {"b": ("b", (4.0, 0.5))})
+    assert not part.held
+    assert stacks.layers(after, 4.0)[-1][1] == pytest.approx(low + 2.0, abs=1e-5)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from flowemu.engine.probe import probe
+from flowemu.engine.points import probe
 from flowemu.errors import RunError
 from tests.unit.engine.runs import finished
 
