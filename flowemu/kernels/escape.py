@@ -92,11 +92,12 @@ def _widen(box, k, x, y, z):
 
 @njit(cache=True)
 def point_inside(
-    points, begin, allowed, top, floor, gone, has_floor, has_gone, film, box, shared, code, piece, pieces, x0, y0, cell,
-    zc,
+    points, offset, cosine, sine, centre, begin, allowed, top, floor, gone, has_floor, has_gone, film, box, shared,
+    code, piece, pieces, x0, y0, cell, zc,
 ):  # fmt: skip
     """Number of a point, `(m, 3)`, deeper than `allowed` um in one film of the rest, looked for from `begin` on; or -1.
 
+    The points are turned about the upright through `centre (2,)` and moved by `offset (3,)` first.
     `box (6,)` is the film's of `film_boxes`. Where the film is `shared` with the body itself, a point counts
     only if a sample of the film beside it belongs to another piece. Points outside the window's sides are carried
     in, as in a mirror.
@@ -105,22 +106,26 @@ def point_inside(
     low, high = zc[min(max(box[4], 0), nz - 1)], zc[min(max(box[5], 0), nz - 1)]
     for m in range(points.shape[0]):
         k = begin + m if begin + m < points.shape[0] else begin + m - points.shape[0]
-        if points[k, 2] >= zc[nz - 1] or points[k, 2] <= zc[0]:
-            if points[k, 2] <= zc[0] and film == 0 and cell > allowed:
+        at_z = points[k, 2] + offset[2]
+        if at_z >= zc[nz - 1] or at_z <= zc[0]:
+            if at_z <= zc[0] and film == 0 and cell > allowed:
                 return k
             continue
-        if points[k, 2] < low or points[k, 2] > high:
+        if at_z < low or at_z > high:
             continue
-        fx = min(max((points[k, 0] - x0) / cell, 0.0), nx - 1.0)
-        fy = min(max((points[k, 1] - y0) / cell, 0.0), ny - 1.0)
+        away_x, away_y = points[k, 0] - centre[0], points[k, 1] - centre[1]
+        at_x = centre[0] + cosine * away_x - sine * away_y + offset[0]
+        at_y = centre[1] + sine * away_x + cosine * away_y + offset[1]
+        fx = min(max((at_x - x0) / cell, 0.0), nx - 1.0)
+        fy = min(max((at_y - y0) / cell, 0.0), ny - 1.0)
         if fx < box[0] or fx > box[1] or fy < box[2] or fy > box[3]:
             continue
         x = min(int(fx), max(nx - 2, 0))
         y = min(int(fy), max(ny - 2, 0))
-        z = min(max(np.searchsorted(zc, points[k, 2]) - 1, 0), nz - 2)
+        z = min(max(np.searchsorted(zc, at_z) - 1, 0), nz - 2)
         x1 = min(x + 1, nx - 1)
         y1 = min(y + 1, ny - 1)
-        wz = (points[k, 2] - zc[z]) / (zc[z + 1] - zc[z])
+        wz = (at_z - zc[z]) / (zc[z + 1] - zc[z])
         wx = fx - x
         wy = fy - y
         if -_trilinear(top, z, y, x, wz, wy, wx, z + 1, y1, x1) <= allowed:

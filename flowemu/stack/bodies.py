@@ -153,25 +153,12 @@ def box_and_volume(
     """Box `(x0, y0, z0, x1, y1, z1)` in um and volume in um3 of a part, from its `surface_points` if given."""
     from flowemu.stack.measure import film_volume
 
-    grid = stack.grid
-    columns = part_columns(stack, part)
-    if not columns.any():
-        return (0.0, 0.0, 0.0, 0.0, 0.0, 0.0), 0.0
-    ys, xs = np.nonzero(columns)
-    low, high = np.inf, -np.inf
     points = surface_points(stack, part) if points is None else points
-    if len(points):
-        low, high = float(points[:, 2].min()), float(points[:, 2].max())
-        x0, x1 = float(points[:, 0].min()), float(points[:, 0].max())
-        y0, y1 = float(points[:, 1].min()), float(points[:, 1].max())
-    else:
-        x0, x1 = float(grid.x[xs.min()]), float(grid.x[xs.max()])
-        y0, y1 = float(grid.y[ys.min()]), float(grid.y[ys.max()])
-    volume = 0.0
-    for k in part.films:
-        whole = film_volume(stack.films[k], grid)
-        volume += whole * _share_of_film(stack, part, k)
-    return (x0, y0, low, x1, y1, high), volume
+    if not len(points):
+        return (0.0, 0.0, 0.0, 0.0, 0.0, 0.0), 0.0
+    (x0, y0, z0), (x1, y1, z1) = points.min(axis=0).tolist(), points.max(axis=0).tolist()
+    volume = sum(film_volume(stack.films[k], stack.grid) * _share_of_film(stack, part, k) for k in part.films)
+    return (x0, y0, z0, x1, y1, z1), volume
 
 
 def _share_of_film(stack: FilmStack, part: Part, k: int) -> float:

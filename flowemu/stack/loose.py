@@ -43,7 +43,7 @@ class Obstacle:
 
     def __init__(self, stack: FilmStack, part: Part, points: np.ndarray) -> None:
         self.stack, self.part = stack, part
-        self.all_points = points
+        self.all_points = np.ascontiguousarray(points)
         step = max(1, len(points) // MOST_POINTS)
         self.points = np.ascontiguousarray(points[::step])
         self.centre = points.mean(axis=0) if len(points) else np.zeros(3)
@@ -71,17 +71,18 @@ class Obstacle:
                 out[k] = True
         return out
 
-    def touches(self, points: np.ndarray) -> bool:
-        """Whether one of these points lies deeper in the rest than is allowed."""
+    def touches(self, points: np.ndarray, offset: np.ndarray, turn: float) -> bool:
+        """Whether one of these points, turned and moved, lies deeper in the rest than is allowed."""
         grid, t = self.stack.grid, self.stack.topology
+        cosine, sine = (float(np.cos(turn)), float(np.sin(turn))) if turn else (1.0, 0.0)
         for k in self.order:
             film = self.stack.films[k]
             floor = film.top if film.floor is None else film.floor
             gone = film.top if film.gone is None else film.gone
             found = kernel.point_inside(
-                points, min(self.hit, len(points) - 1), ALLOWED * grid.cell, film.top, floor, gone,
-                film.floor is not None, film.gone is not None, k, self.boxes[k], self.shared[k], t.code, t.piece,
-                self.pieces, grid.x[0], grid.y[0], grid.cell, grid.z,
+                points, offset, cosine, sine, self.centre, min(self.hit, len(points) - 1), ALLOWED * grid.cell,
+                film.top, floor, gone, film.floor is not None, film.gone is not None, k, self.boxes[k],
+                self.shared[k], t.code, t.piece, self.pieces, grid.x[0], grid.y[0], grid.cell, grid.z,
             )  # fmt: skip
             if found >= 0:
                 self.hit = found
@@ -94,17 +95,8 @@ class Obstacle:
 
         A share of its points is tried, and then, if `every` one is to count, all of them.
         """
-        return any(
-            self.touches(self._moved(points, offset, turn))
-            for points in ((self.points, self.all_points) if every else (self.points,))
-        )
-
-    def _moved(self, points: np.ndarray, offset: np.ndarray, turn: float) -> np.ndarray:
-        if turn:
-            c, s = np.cos(turn), np.sin(turn)
-            flat = points[:, :2] - self.centre[:2]
-            points = np.column_stack([flat @ np.array([[c, s], [-s, c]]) + self.centre[:2], points[:, 2]])
-        return np.ascontiguousarray(points + offset)
+        chosen = (self.points, self.all_points) if every else (self.points,)
+        return any(self.touches(points, np.asarray(offset, np.float64), turn) for points in chosen)
 
 
 def judge(stack: FilmStack, part: Part, points: np.ndarray | None = None) -> Verdict:

@@ -7,6 +7,7 @@ from itertools import pairwise
 import numpy as np
 import pytest
 from scipy.interpolate import RegularGridInterpolator
+from scipy.spatial.transform import Rotation
 
 from flowemu.kernels import escape
 from flowemu.stack.film import Film
@@ -41,7 +42,8 @@ def everywhere(shape: tuple[int, int, int]) -> np.ndarray:
 
 def point_inside(
     stack: FilmStack, k: int, points: np.ndarray, begin: int = 0, allowed: float = 0.1, shared: bool = False,
-    pieces: np.ndarray | None = None,
+    pieces: np.ndarray | None = None, offset: tuple[float, float, float] = (0.0, 0.0, 0.0), turn: float = 0.0,
+    centre: tuple[float, float] = (0.0, 0.0),
 ) -> int:  # fmt: skip
     t, z, film = stack.topology, stack.grid.z, stack.films[k]
     floor = film.top if film.floor is None else film.floor
@@ -49,8 +51,9 @@ def point_inside(
     own = np.empty(0, np.int64) if pieces is None else pieces
     return int(
         escape.point_inside(
-            points, begin, allowed, film.top, floor, gone, film.floor is not None, film.gone is not None, k,
-            everywhere(t.code.shape), shared, t.code, t.piece, own, 0.0, 0.0, CELL, z,
+            points, np.array(offset), np.cos(turn), np.sin(turn), np.array(centre), begin, allowed, film.top, floor,
+            gone, film.floor is not None, film.gone is not None, k, everywhere(t.code.shape), shared, t.code, t.piece,
+            own, 0.0, 0.0, CELL, z,
         )
     )  # fmt: skip
 
@@ -69,6 +72,19 @@ def test_the_first_point_inside_is_that_of_interpolated_fields(seed: int, allowe
             expected = next((int(p) for p in order if inside[p]), -1)
             assert point_inside(stack, k, points, begin, allowed) == expected
         assert point_inside(stack, k, points[~inside], 0, allowed) == -1
+
+
+def test_points_are_turned_about_the_centre_and_then_moved() -> None:
+    """As with points that were turned and moved before, by scipy's rotation."""
+    stack = naive.random_stack(1)
+    z, turn, centre, offset = stack.grid.z, 0.7, (2.0, 2.5), (0.4, -0.3, 0.2)
+    points = np.random.default_rng(1).uniform([0.5, 0.5, z[0] + 0.3], [4.0, 4.0, z[-1] - 0.3], (60, 3))
+    middle = np.array([*centre, 0.0])
+    moved = Rotation.from_euler("z", turn).apply(points - middle) + middle + offset
+    for k in range(len(stack.films)):
+        for begin in (0, 30):
+            found = point_inside(stack, k, points, begin, offset=offset, turn=turn, centre=centre)
+            assert found == point_inside(stack, k, moved, begin)
 
 
 def test_below_the_grid_is_wafer_and_above_it_nothing() -> None:
