@@ -15,34 +15,14 @@ from concurrent.futures import ThreadPoolExecutor
 import numpy as np
 from numba import get_num_threads, njit
 
-TETRAHEDRA = np.array(
-    [(0, 1, 3, 7), (0, 1, 5, 7), (0, 2, 3, 7), (0, 2, 6, 7), (0, 4, 5, 7), (0, 4, 6, 7)], dtype=np.int64
-)
-STEP_OF_BITS = np.array([-1, 0, 1, 3, 2, 4, 5, 6], dtype=np.int64)
+from flowemu.kernels.regions import STEP_OF_BITS, TETRAHEDRA
+
 NUDGE = 0.01  # how far, as a share of a cell, either side of a face is looked at
 THIN = 1e-3  # of a cell: two surfaces that lie closer than this are one
 PIECES = 24  # that a face may be cut into
 CORNERS = 16  # of one piece
 MOST = 600  # triangles of one film in one cell
 RUN = 4096  # cells that a thread takes at a time
-
-
-@njit(cache=True)
-def _present(base, corner_offsets, row_of, code, count, start, interval_code, present):
-    """Mark in `present` the films that reach into a cell (as corner or inside an edge)."""
-    present[:] = 0
-    for a in range(8):
-        i = base + corner_offsets[a]
-        if code[i] >= 0:
-            present[code[i]] = 1
-        s = row_of[i]
-        for b in range(a + 1, 8):
-            if (a & b) == a:
-                d = STEP_OF_BITS[b - a]
-                at = start[s * 7 + d]
-                for q in range(1, np.int64(count[s, d]) - 1):
-                    if interval_code[at + q] >= 0:
-                        present[interval_code[at + q]] = 1
 
 
 @njit(cache=True)
@@ -340,8 +320,8 @@ def _film_triangles(
 
 @njit(cache=True, nogil=True)
 def _triangles_in(
-    cells, corner_offsets, shape, row_of, values, code, count, start, interval_code, ti, bi, gi, stage, source, is_open,
-    piece, zc, dx, dy,
+    cells, contents, corner_offsets, shape, row_of, values, code, count, start, interval_code, ti, bi, gi, stage,
+    source, is_open, piece, zc, dx, dy,
 ):  # fmt: skip
     """`bare_triangles` of some cells."""
     _, ny, nx = shape
@@ -349,7 +329,6 @@ def _triangles_in(
     nf = values.shape[1]
     number = np.zeros(cells.size, np.int32)
     partly = np.zeros(cells.size, np.uint8)
-    present = np.empty(films, np.int64)
     here = source.copy()
     from_void = not source.any()
     negative = np.empty(nf, np.bool_)
@@ -367,11 +346,10 @@ def _triangles_in(
             base, corner_offsets, row_of, code, count, start, interval_code, is_open, piece, here
         ):
             continue
-        _present(base, corner_offsets, row_of, code, count, start, interval_code, present)
         nc = -1
         before = n
         for film in range(films):
-            if present[film] == 0 or stage[film] == 0:
+            if stage[film] == 0 or (contents[c] >> np.uint64(film % 63)) & np.uint64(1) == 0:
                 continue
             if nc < 0:
                 nc = _cell_values(base, corner_offsets, row_of, values, negative, cut, corner_values)
@@ -393,12 +371,12 @@ def _triangles_in(
 
 
 def bare_triangles(
-    cells: np.ndarray, corner_offsets: np.ndarray, shape: tuple[int, int, int], row_of: np.ndarray, values: np.ndarray,
-    code: np.ndarray, count: np.ndarray, start: np.ndarray, interval_code: np.ndarray, ti: np.ndarray, bi: np.ndarray,
-    gi: np.ndarray, stage: np.ndarray, source: np.ndarray, is_open: np.ndarray, piece: np.ndarray, zc: np.ndarray,
-    dx: float, dy: float,
+    cells: np.ndarray, contents: np.ndarray, corner_offsets: np.ndarray, shape: tuple[int, int, int],
+    row_of: np.ndarray, values: np.ndarray, code: np.ndarray, count: np.ndarray, start: np.ndarray,
+    interval_code: np.ndarray, ti: np.ndarray, bi: np.ndarray, gi: np.ndarray, stage: np.ndarray, source: np.ndarray,
+    is_open: np.ndarray, piece: np.ndarray, zc: np.ndarray, dx: float, dy: float,
 ) -> tuple[np.ndarray, ...]:  # fmt: skip
-    """The bare triangles of staged films in the mixed cells.
+    """The bare triangles of staged films in mixed cells with these `contents (cells,)`, of `kernels.contents`.
 
     The etchant comes from the films that `source` marks; where none is marked, from the voids whose roots `is_open`
     marks.
@@ -412,11 +390,12 @@ def bare_triangles(
     """
 
     def run(first: int) -> tuple[np.ndarray, ...]:
-        found: tuple[np.ndarray, ...] = _triangles_in(
-            cells[first : first + RUN], corner_offsets, shape, row_of, values, code, count, start, interval_code, ti,
+        some = slice(first, first + RUN)
+        part: tuple[np.ndarray, ...] = _triangles_in(
+            cells[some], contents[some], corner_offsets, shape, row_of, values, code, count, start, interval_code, ti,
             bi, gi, stage, source, is_open, piece, zc, dx, dy,
         )  # fmt: skip
-        return found
+        return part
 
     with ThreadPoolExecutor(get_num_threads()) as threads:
         found = list(threads.map(run, range(0, max(len(cells), 1), RUN)))

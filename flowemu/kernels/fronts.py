@@ -168,56 +168,6 @@ def link(node_sample, node_film, own, keys, first_thin, code, medium, shape, row
 
 
 @njit(cache=True)
-def _mean_beside(value, known, z, y, x):
-    """Mean of a sample's known neighbours, those along an axis first, then across a face, then across a corner."""
-    nz, ny, nx = value.shape
-    best = 4
-    total = 0.0
-    n = 0
-    for dz in range(-1, 2):
-        for dy in range(-1, 2):
-            for dx in range(-1, 2):
-                k = abs(dz) + abs(dy) + abs(dx)
-                a, b, c = z + dz, y + dy, x + dx
-                if k == 0 or k > best or a < 0 or b < 0 or c < 0 or a >= nz or b >= ny or c >= nx:
-                    continue
-                if not known[a, b, c]:
-                    continue
-                if k < best:
-                    best = k
-                    total = 0.0
-                    n = 0
-                total += value[a, b, c]
-                n += 1
-    return total / n
-
-
-@njit(cache=True, parallel=True)
-def spread_once(value, known, want):
-    """Give each wanted sample that is unknown the mean of its known neighbours (axis ones first).
-
-    Writes into copies, so that the result does not depend on the order; returns (value, known).
-    """
-    nz, ny, nx = value.shape
-    out = value.copy()
-    done = known.copy()
-    for plane in prange(nz):
-        z = np.int64(plane)
-        beside = np.zeros(nx + 2, np.bool_)  # whether one of the nine samples at this x is known
-        for y in range(ny):
-            beside[:] = False
-            for a in range(max(z - 1, 0), min(z + 2, nz)):
-                for b in range(max(y - 1, 0), min(y + 2, ny)):
-                    for x in range(nx):
-                        beside[x + 1] |= known[a, b, x]
-            for x in range(nx):
-                if want[z, y, x] and not known[z, y, x] and (beside[x] or beside[x + 1] or beside[x + 2]):
-                    out[z, y, x] = _mean_beside(value, known, z, y, x)
-                    done[z, y, x] = True
-    return out, done
-
-
-@njit(cache=True)
 def bare_voids(samples, code, open_space, strides, count, start, interval_code, film):
     """Mark the open-space samples whose void borders on `film` along an axis edge, `(n,)` bool."""
     out = np.zeros(code.size, np.bool_)

@@ -71,11 +71,6 @@ def thickness_maps(stack: FilmStack) -> np.ndarray:
     return beam.column_thickness(*column_edges(stack), len(stack.films))[:, :ny, :nx]
 
 
-def thickness_map(stack: FilmStack, k: int) -> np.ndarray:
-    """Total vertical thickness of film `k` in every column, `(ny, nx)` um."""
-    return thickness_maps(stack)[k]
-
-
 def topmost(stack: FilmStack) -> np.ndarray:
     """Number of the film seen from above in every column, -1 for none, `(ny, nx)` int32."""
     _, ny, nx = stack.grid.shape

@@ -42,13 +42,14 @@ class Faces:
     partly: np.ndarray
 
     @classmethod
-    def of(cls, stack: FilmStack, stage: np.ndarray, source: np.ndarray, within: np.ndarray) -> Faces:
-        """The faces of staged films in the listed cells that lie bare to what `source` marks; see `kernels.faces`."""
+    def of(cls, stack: FilmStack, stage: np.ndarray, source: np.ndarray, chosen: np.ndarray) -> Faces:
+        """The faces of staged films that lie bare to what `source` marks, in the chosen ones of the mixed cells."""
         t, grid, f = stack.topology, stack.grid, stack.topology.fields
+        within = t.cells[chosen]
         triangles, films, outer, number, partly = faces.bare_triangles(
-            within, t.corner_offsets, t.code.shape, t.row_of, t.values, t.code.reshape(-1), t.count, t.start,
-            t.interval_code, f.top, f.floor, f.gone, stage, source, t.is_open, t.piece, grid.z, grid.cell,
-            grid.cell,
+            within, t.contents[chosen], t.corner_offsets, t.code.shape, t.row_of, t.values, t.code.reshape(-1),
+            t.count, t.start, t.interval_code, f.top, f.floor, f.gone, stage, source, t.is_open, t.piece, grid.z,
+            grid.cell, grid.cell,
         )  # fmt: skip
         bare = np.flatnonzero(number)
         first = np.concatenate([[0], np.cumsum(number[bare])])
@@ -69,7 +70,7 @@ def cells_with_faces(stack: FilmStack, k: int) -> np.ndarray:
     stage, source = np.zeros(len(stack.films), np.uint8), np.zeros(2 * (len(stack.films) + 1) + 1, np.uint8)
     stage[k] = 1
     t = stack.topology
-    return Faces.of(stack, stage, source, t.cells[contents.cells_between(t.contents, stage, source)]).cells
+    return Faces.of(stack, stage, source, contents.cells_between(t.contents, stage, source)).cells
 
 
 def _start(stack: FilmStack, front: Front, found: Faces, base: np.ndarray, chosen: np.ndarray) -> None:
@@ -96,7 +97,7 @@ def start_from_void(stack: FilmStack, front: Front) -> None:
     between = contents.cells_between(t.contents, front.nodes.stage, source)
     cells = t.cells[between]
     quiet = _start_from_fields(stack, front, cells, t.contents[between])
-    found = Faces.of(stack, front.nodes.stage, source, cells[~quiet])
+    found = Faces.of(stack, front.nodes.stage, source, between[~quiet])
     found.mark_ends(stack, front.nodes, cells[quiet])
     _start(stack, front, found, np.zeros((len(found.films), 3)), np.arange(len(found.cells)))
 
@@ -153,8 +154,8 @@ class Passage:
         t = self.stack.topology
         chosen = contents.cells_between(t.contents, self.nodes.stage, self.source)
         if self.thin is not None:
-            return Faces.of(self.stack, self.nodes.stage, self.source, t.cells[chosen[self.thin[chosen]]])
-        found = Faces.of(self.stack, self.nodes.stage, self.source, t.cells[chosen])
+            return Faces.of(self.stack, self.nodes.stage, self.source, chosen[self.thin[chosen]])
+        found = Faces.of(self.stack, self.nodes.stage, self.source, chosen)
         found.mark_ends(self.stack, self.nodes, found.cells)
         return found
 

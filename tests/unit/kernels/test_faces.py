@@ -24,7 +24,7 @@ def bare(stack: FilmStack, stage: list[int]) -> tuple[np.ndarray, np.ndarray, np
     is_open[t.open_roots] = 1
     source = np.zeros(2 * (len(stack.films) + 1) + 1, np.uint8)
     triangles, films, *_, number, partly = faces.bare_triangles(
-        t.cells, t.corner_offsets, t.code.shape, t.row_of, t.values, t.code.reshape(-1), t.count, t.start,
+        t.cells, t.contents, t.corner_offsets, t.code.shape, t.row_of, t.values, t.code.reshape(-1), t.count, t.start,
         t.interval_code, t.fields.top, t.fields.floor, t.fields.gone, staged, source, is_open, t.piece, grid.z,
         grid.cell, grid.cell,
     )  # fmt: skip

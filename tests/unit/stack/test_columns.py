@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from flowemu.stack.columns import thickness_map, topmost
+from flowemu.stack.columns import thickness_maps, topmost
 from flowemu.stack.measure import film_volume
 from flowemu.steps.models.coating import coat
 from tests import stacks
@@ -40,7 +40,7 @@ def test_maps_agree_with_points_and_with_volumes():
     stack = stair()
     for name in ("low", "skin", "high"):
         k = stack.index(name)
-        found = thickness_map(stack, k)
+        found = thickness_maps(stack)[k]
         assert found.shape == (4, 20)
         assert found[2, 15] == pytest.approx(stacks.thickness(stack, name, 15.5, 2.5), abs=1e-5)
         assert found.sum() == pytest.approx(film_volume(stack.films[k], stack.grid), rel=0.05)
